@@ -98,10 +98,7 @@ def _written(location: Location) -> str:
     if not location:
         return "the recipe"
     head, rest = str(location[0]), list(location[1:])
-    if rest and isinstance(rest[0], int):
-        head = f"[[{head}]] number {rest.pop(0) + 1} "
-    else:
-        head = f"[{head}]"
+    head = f"[[{head}]] number {rest.pop(0) + 1} " if rest and isinstance(rest[0], int) else f"[{head}]"
     for part in rest:
         head += f"[{part}]" if isinstance(part, int) else f".{part}"
     return head

@@ -28,7 +28,7 @@ def key_lines(text: str) -> dict[Location, int]:
         if header:
             parts = tuple(_bare(part) for part in header.group(2).split("."))
             if header.group(1) == "[[":
-                prefix = _within_arrays(parts[:-1], arrays) + (parts[-1], arrays[parts])
+                prefix = (*_within_arrays(parts[:-1], arrays), parts[-1], arrays[parts])
                 arrays[parts] += 1
                 lines.setdefault(prefix[:-1], number)
             else:
