@@ -1,0 +1,200 @@
+"""Standard error and effective sample size of time means: integral scale, block bootstrap, spread over
+deployments.
+
+A record is one deployment; its uncertainty comes from its own integral scale. A virtual instrument has many
+deployments in the same water: their mean series carries the dependence between them, so the error of the
+model's mean comes from that series, and never less than what the spread over deployments says.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+#: Below this many times the time axis says nothing about the error of its mean.
+FEWEST_TIMES = 8
+
+#: So many virtual deployments give the spread of a single one to about 15 % (1/sqrt(2 n)).
+FEWEST_DEPLOYMENTS = 20
+
+
+@dataclass(frozen=True)
+class Estimate:
+    """A quantity at each of its depths.
+
+    value, standard_error, effective_samples: (depth,). by_deployment: (deployment, depth) values of single
+    deployments. effective_samples is the number of independent samples whose mean would have the standard
+    error.
+    """
+
+    value: np.ndarray
+    standard_error: np.ndarray
+    effective_samples: np.ndarray
+    by_deployment: np.ndarray
+
+
+def _mean(values: np.ndarray, axis: int | tuple[int, ...]) -> np.ndarray:
+    """Mean of the finite values, NaN where there are none, without warnings."""
+    good = np.isfinite(values)
+    with np.errstate(invalid="ignore", divide="ignore"):
+        return np.asarray(np.where(good, values, 0.0).sum(axis=axis) / good.sum(axis=axis))
+
+
+def effective_samples(values: np.ndarray) -> np.ndarray:
+    """n_eff = n / (1 + 2 sum r_k) along axis 0 of (time, column), the sum up to the first zero crossing of r.
+
+    The autocorrelation is corrected once for the removal of the sample mean, which lowers every r_k by
+    1/n_eff (to first order; derived here). NaN are gaps: lags are averaged over the pairs there are. At least
+    1, at most the number of good samples.
+    """
+    count = values.shape[0]
+    good = np.isfinite(values)
+    number = good.sum(axis=0)
+    departure = np.where(good, values - _mean(values, 0), 0.0)
+    size = 2 * count
+    covariance = np.fft.irfft(np.abs(np.fft.rfft(departure, size, axis=0)) ** 2, size, axis=0)[:count]
+    pairs = np.fft.irfft(np.abs(np.fft.rfft(good.astype(np.float64), size, axis=0)) ** 2, size, axis=0)[
+        :count
+    ]
+    with np.errstate(invalid="ignore", divide="ignore"):
+        r = np.where(pairs > 0.5, covariance / np.round(np.maximum(pairs, 1.0)), 0.0)
+        r = r / r[0]
+    r = np.where(np.isfinite(r), r, 0.0)
+    # far lags rest on few pairs; a crossing is looked for in the first half only
+    first = _sum_to_crossing(r[: max(2, count // 2)])
+    with np.errstate(invalid="ignore", divide="ignore"):
+        lost = np.clip(first / number, 0.0, 0.5)
+    corrected = (r + lost) / (1.0 + lost)
+    corrected[0] = 1.0
+    # the correction must not keep a dead autocorrelation above zero for ever: it is summed to the crossing of
+    # the raw one
+    factor = _sum_to_crossing(corrected[: max(2, count // 2)], r[: max(2, count // 2)])
+    with np.errstate(invalid="ignore", divide="ignore"):
+        result = number / np.maximum(factor, 1e-12)
+    constant = covariance[0] <= 0
+    return np.asarray(np.where(number > 0, np.where(constant, number, np.clip(result, 1.0, number)), 0.0))
+
+
+def _sum_to_crossing(r: np.ndarray, crossing_of: np.ndarray | None = None) -> np.ndarray:
+    """1 + 2 sum of r_k for k >= 1 up to the first non-positive value."""
+    below = (r if crossing_of is None else crossing_of) <= 0
+    first = np.where(below.any(axis=0), np.argmax(below, axis=0), r.shape[0])
+    inside = np.arange(r.shape[0])[:, None] < first
+    return np.asarray(2.0 * np.where(inside, r, 0.0).sum(axis=0) - 1.0)
+
+
+def bootstrap_standard_error(values: np.ndarray, count: int, rng: np.random.Generator) -> np.ndarray:
+    """Standard error of the mean along axis 0 of (time, column) by the stationary block bootstrap (Politis &
+    Romano 1994), block length by Politis & White 2004 (with the correction of Patton, Politis & White 2009),
+    both from `arch`.
+
+    Columns of similar block length (to a factor of 2) share their resampled blocks: one matrix of how often
+    each time is drawn gives the replicates of all of them by one product.
+    """
+    from arch.bootstrap import StationaryBootstrap, optimal_block_length
+
+    times = values.shape[0]
+    good = np.isfinite(values)
+    filled = np.where(good, values, _mean(values, 0))
+    out = np.full(values.shape[1], np.nan)
+    spread = np.where(good.any(axis=0), filled.std(axis=0), 0.0)
+    varying = np.flatnonzero(good.any(axis=0) & (spread > 0))
+    out[np.flatnonzero(good.any(axis=0) & (spread == 0))] = 0.0
+    lengths: dict[int, list[int]] = {}
+    for column in varying:
+        length = float(optimal_block_length(filled[:, column])["stationary"].iloc[0])
+        length = min(max(length, 1.0), times / 3.0) if np.isfinite(length) else 1.0
+        lengths.setdefault(int(np.ceil(np.log2(length))), []).append(int(column))
+    for power, columns in sorted(lengths.items()):
+        # the mean block length of the group: no shorter than any of its members, and no longer than a third
+        # of the series
+        draws = StationaryBootstrap(min(2.0**power, times / 3.0), np.arange(times), seed=rng)
+        weights = np.empty((count, times))
+        for i, (position, _) in enumerate(draws.bootstrap(count)):
+            weights[i] = np.bincount(position[0], minlength=times)
+        part = np.where(good[:, columns], values[:, columns], 0.0)
+        with np.errstate(invalid="ignore", divide="ignore"):
+            replicates = (weights @ part) / (weights @ good[:, columns].astype(np.float64))
+        replicates = np.where(np.isfinite(replicates), replicates, _mean(values[:, columns], 0))
+        out[columns] = replicates.std(axis=0, ddof=1)
+    return out
+
+
+def estimate(values: np.ndarray, bootstrap_count: int, rng: np.random.Generator) -> Estimate:
+    """The mean over deployments and time of contributions (deployment, time, depth), with its error.
+
+    The error of the time mean is the larger of the integral-scale and the block-bootstrap estimates (the
+    bootstrap of a short series is too small, the integral scale can miss slow motions); with several
+    deployments it is not below their standard deviation over the square root of their number.
+    """
+    deployments, times, _ = values.shape
+    by_deployment = _mean(values, 1)
+    value = _mean(values, (0, 1))
+    variance = _mean((values - value) ** 2, (0, 1))
+    error = np.full(value.shape, np.nan)
+    if times >= FEWEST_TIMES:
+        series = _mean(values, 0)
+        number = effective_samples(series)
+        scatter = _mean((series - _mean(series, 0)) ** 2, 0)
+        with np.errstate(invalid="ignore", divide="ignore"):
+            # n_eff - 1 as the sample variance of n_eff independent values is formed about their own mean
+            by_scale = np.sqrt(scatter / np.maximum(number - 1.0, 1e-9))
+        error = np.fmax(by_scale, bootstrap_standard_error(series, bootstrap_count, rng))
+    if deployments > 1:
+        known = np.isfinite(by_deployment)
+        some = np.maximum(known.sum(axis=0), 1)
+        centred = np.where(known, by_deployment - _mean(by_deployment, 0), 0.0)
+        with np.errstate(invalid="ignore", divide="ignore"):
+            across = np.sqrt((centred**2).sum(axis=0) / (some - 1.0) / some)
+        error = np.fmax(error, across)
+    with np.errstate(invalid="ignore", divide="ignore"):
+        effective = np.where(error > 0, variance / error**2, np.isfinite(values).sum(axis=(0, 1)))
+    samples = np.isfinite(values).sum(axis=(0, 1)).astype(np.float64)
+    effective = np.where(np.isfinite(error), np.clip(effective, 0.0, samples), 0.0)
+    return Estimate(value, error, effective, by_deployment)
+
+
+def not_below_ensemble(
+    record: tuple[float, float, float], deployments: np.ndarray, relative: bool, pieces: int
+) -> tuple[float, float, float]:
+    """(value, standard error, effective samples) of a record, its error raised to the spread of single
+    virtual deployments.
+
+    deployments: values of the model's single deployments. A record is one deployment (or `pieces` of them),
+    so their standard deviation is its sampling error under the model; it is steadier than what one record
+    says of itself, which is too small for a third of short records. relative: the spread is carried over in
+    proportion (variances, speeds). Needs `FEWEST_DEPLOYMENTS`; deployments in shared water vary less than
+    free ones, hence never lowered.
+    """
+    value, error, samples = record
+    known = deployments[np.isfinite(deployments)]
+    if known.size < FEWEST_DEPLOYMENTS or not (np.isfinite(error) and error > 0):
+        return record
+    spread = float(known.std(ddof=1)) / np.sqrt(pieces)
+    if relative:
+        centre = float(known.mean())
+        spread = spread / centre * value if centre > 0 and value > 0 else 0.0
+    if spread <= error:
+        return record
+    return value, spread, samples * (error / spread) ** 2
+
+
+def paired(estimate_: Estimate, weights: np.ndarray) -> Estimate:
+    """The estimate at depths that are weighted means of its own: weights (pair, depth). Errors of
+    neighbouring depths are taken as fully dependent, which never makes them too small."""
+
+    def mix(values: np.ndarray) -> np.ndarray:
+        used = weights > 0
+        out = np.where(used, weights * np.where(np.isfinite(values), values, 0.0)[..., None, :], 0.0).sum(
+            axis=-1
+        )
+        lost = (used & ~np.isfinite(values)[..., None, :]).any(axis=-1)
+        return np.asarray(np.where(lost, np.nan, out))
+
+    return Estimate(
+        mix(estimate_.value),
+        mix(estimate_.standard_error),
+        mix(estimate_.effective_samples),
+        mix(estimate_.by_deployment),
+    )
