@@ -17,8 +17,6 @@ def plan_view_figure(views: xr.Dataset, directions: dict[str, dict[str, float]])
     directions: per window name, any of "wind", "waves" (towards, degrees counter-clockwise from +x) and "axis" (a
     director); drawn as arrows and a double-headed line in the corner.
     """
-    import cmocean
-
     names = [str(name) for name in views["window"].values]
     columns = min(len(names), 3)
     rows = -(-len(names) // columns)
@@ -30,7 +28,7 @@ def plan_view_figure(views: xr.Dataset, directions: dict[str, dict[str, float]])
         view = views.sel(window=name)
         x, y = views["x"].values, views["y"].values
         dx, dy = x[1] - x[0], y[1] - y[0]
-        image = axis.imshow(view["w"].values * 100, origin="lower", cmap=cmocean.cm.balance, vmin=-limit, vmax=limit,
+        image = axis.imshow(view["w"].values * 100, origin="lower", cmap=style.colour_map("balance"), vmin=-limit, vmax=limit,
                             extent=(x[0] - dx / 2, x[-1] + dx / 2, y[0] - dy / 2, y[-1] + dy / 2),
                             interpolation="nearest", rasterized=True)
         axis.set_title(f"{name}: {float(view['depth']):.1f} m, t = {float(view['view_time']) / 3600:.2f} h")

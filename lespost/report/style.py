@@ -84,3 +84,14 @@ def save(figure: Figure, folder: Path, name: str) -> list[Path]:
         paths.append(path)
     plt.close(figure)
     return paths
+
+
+def colour_map(name: str) -> Any:
+    """The cmocean map called `name`, e.g. "balance" for signed and "deep" for depth."""
+    import warnings
+
+    with warnings.catch_warnings():
+        # cmocean builds its maps with an argument that newer matplotlib deprecates; the maps are the same.
+        warnings.simplefilter("ignore", DeprecationWarning)
+        import cmocean
+    return getattr(cmocean.cm, name)

@@ -32,15 +32,13 @@ def triangle_figure(profile: pd.DataFrame, regime: pd.DataFrame, name: str, refe
     regime: rows of regime.csv for this window.
     reference_depth: the layer depth h that scales the colours [m].
     """
-    import cmocean
-
     figure, axis = plt.subplots(figsize=(style.ONE_COLUMN, 3.1))
     _frame(axis)
     x, y = ternary(*(profile[f"fraction_{part}"].to_numpy(float) for part in ("along", "cross", "vertical")))
     relative = profile["depth"].to_numpy(float) / reference_depth
     inside = np.isfinite(x) & (relative <= 1.0)
     axis.plot(x[inside], y[inside], color="0.6", linewidth=0.6, zorder=2)
-    dots = axis.scatter(x[inside], y[inside], c=relative[inside], cmap=cmocean.cm.deep, vmin=0, vmax=1, s=14,
+    dots = axis.scatter(x[inside], y[inside], c=relative[inside], cmap=style.colour_map("deep"), vmin=0, vmax=1, s=14,
                         edgecolor="0.25", linewidth=0.25, zorder=3)
     for _, row in regime.iterrows():
         px, py = ternary(np.array(row["fraction_along"]), np.array(row["fraction_cross"]),
