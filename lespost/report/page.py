@@ -154,7 +154,9 @@ def _comparison(results: Results, figures: list[FigureFile]) -> dict[str, Any] |
         return None
     counts = table["verdict"].value_counts()
     summary = ", ".join(f"{counts.get(verdict, 0)} {verdict}" for verdict in ("agrees", "differs", "cannot tell"))
-    columns = ["instrument", "record", "quantity", "units", "depth", "record_value", "record_se", "model_value",
+    pairs = table[["instrument", "record"]].drop_duplicates()
+    several = [] if len(pairs) == 1 else ["instrument", "record"]
+    columns = [*several, "quantity", "units", "depth", "record_value", "record_se", "model_value",
                "model_se", "ratio", "ratio_low", "ratio_high", "p_adjusted", "verdict", "note"]
     return {
         "summary": f"Of {len(table)} claims: {summary}. Both sides went through the same processing; intervals are "

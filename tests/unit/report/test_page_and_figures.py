@@ -109,8 +109,11 @@ def test_an_incomplete_folder_is_told(tmp_path: Path) -> None:
         build_report(folder)
 
 
-@pytest.mark.parametrize(("value", "text"), [(0.0061, "0.0061"), (np.nan, ""), (None, ""), (123456.0, "1.23·10^5"), (-2.5, "−2.5"),
-                                             (4.5e-7, "4.50·10^−7"), (0.0, "0"), (33.0, "33")])
+@pytest.mark.parametrize(
+    ("value", "text"),
+    [(0.0061, "0.0061"), (np.nan, ""), (None, ""), (123456.0, "1.23·10^5"), (-2.5, "−2.5"), (4.5e-7, "4.50·10^−7"), (0.0, "0"),
+     (33.0, "33")],
+)
 def test_numbers_are_written_for_reading(value: float | None, text: str) -> None:
     assert number_text(value) == text
 
