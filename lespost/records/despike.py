@@ -100,8 +100,18 @@ def _phase_space_column(series: np.ndarray, rounds: int) -> np.ndarray:
             along = x * np.cos(angle) + d2x * np.sin(angle)
             across = -x * np.sin(angle) + d2x * np.cos(angle)
             outside |= along**2 / a2 + across**2 / b2 > 1.0
-        new = outside & keep
+        new = _worst_of_each_run(outside & keep, np.abs(x))
         if not new.any():
             break
         spikes |= new
     return spikes
+
+
+def _worst_of_each_run(flagged: np.ndarray, size: np.ndarray) -> np.ndarray:
+    """Of each run of consecutive flagged samples the largest one: the differences of a spike flag its good
+    neighbours too, which the next round, with the spike bridged, finds innocent."""
+    out = np.zeros(flagged.shape, dtype=bool)
+    edges = np.flatnonzero(np.diff(np.concatenate(([0], flagged.astype(np.int8), [0]))))
+    for start, end in zip(edges[::2], edges[1::2], strict=True):
+        out[start + int(np.argmax(size[start:end]))] = True
+    return out

@@ -12,7 +12,7 @@ import numpy as np
 
 from lespost.errors import RecordError
 from lespost.findings import Decision, Finding
-from lespost.records.cf import _valid_range
+from lespost.records.faults import valid_range
 from lespost.records.flags import (
     FAIL,
     MISSING,
@@ -125,7 +125,7 @@ def gather_variable(
     if role == "direction_to" and "from_direction" in variable.standard_name:
         values = values + 180.0
     flags, findings, decisions = _flags(record, variable, values.shape, time_dim, level_dim, settings)
-    low, high = _valid_range(variable)
+    low, high = valid_range(variable)
     stored = _two_axes(variable, time_dim, level_dim, file)
     with np.errstate(invalid="ignore"):
         outside = (stored < low) | (stored > high)

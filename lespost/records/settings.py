@@ -37,16 +37,16 @@ class RecordSettings(Settings):
     name: str = Field(min_length=1, description="Name of the record in tables and figures.")
     path: str = Field(min_length=1, description="File of the record, relative to the recipe.")
     kind: Literal["auto", "netcdf", "csv"] = Field(
-        "auto", description="File kind; auto looks at the first bytes."
+        default="auto", description="File kind; auto looks at the first bytes."
     )
     x_axis_compass_bearing: Annotated[float, InUnit("degree"), Field(ge=-360, le=360)] | None = Field(
-        None,
+        default=None,
         description="Compass bearing of the simulation's +x axis, degrees clockwise from true north; 90 "
         "means that x is "
         "east and y north, which is assumed, and said, where the key is absent.",
     )
     magnetic_declination: Annotated[float, InUnit("degree"), Field(ge=-180, le=180)] | None = Field(
-        None,
+        default=None,
         description="Declination (positive east) still to be applied to components recorded in magnetic "
         "axes; 0 states that "
         "the record is already in true axes.",
@@ -62,22 +62,22 @@ class RecordSettings(Settings):
         description="Units of a variable or column by its name, where the file has none or a wrong one.",
     )
     depth: Annotated[float, InUnit("m"), Field(ge=0)] | None = Field(
-        None, description="Depth of the sensor, for single-level records that do not state it."
+        default=None, description="Depth of the sensor, for single-level records that do not state it."
     )
     depth_positive: Literal["auto", "down", "up"] = Field(
-        "auto",
+        default="auto",
         description="Direction in which the file's vertical coordinate increases; auto trusts its "
         "attributes.",
     )
     moving_depths: Literal["interpolate", "nominal", "refuse"] = Field(
-        "interpolate",
+        default="interpolate",
         description="What to do where cells move (mooring motion): interpolate every profile to the median "
         "depths, ignore "
         "the motion, or refuse.",
     )
-    station: str | None = Field(None, description="Which station of a file that holds several.")
+    station: str | None = Field(default=None, description="Which station of a file that holds several.")
     flag_scheme: Literal["auto", "qartod", "oceansites", "ndbc", "none"] = Field(
-        "auto",
+        default="auto",
         description="Meaning of the quality flags; auto reads it from the file's own flag_meanings or the "
         "convention it "
         "names, and refuses bare numbers. none ignores all flags.",
@@ -87,21 +87,23 @@ class RecordSettings(Settings):
         description="Meaning of flag words that are not in any of the known vocabularies.",
     )
     probably_good: Literal["pass", "suspect"] = Field(
-        "pass", description="What the flag probably good (OceanSITES 2) counts as in QARTOD terms."
+        default="pass", description="What the flag probably good (OceanSITES 2) counts as in QARTOD terms."
     )
     ignore_tests: tuple[str, ...] = Field(
-        (),
+        default=(),
         description="Quality tests whose verdict is set aside, by words of their name, for example "
         '"vertical_velocity": a test of |w| against the speed flags every convective downwelling.',
     )
     time_window: tuple[str, str] | None = Field(
-        None, description="Part of the record to use: two ISO 8601 times (UTC), start included, end excluded."
+        default=None,
+        description="Part of the record to use: two ISO 8601 times (UTC), start included, end excluded.",
     )
     noise_standard_deviation: Annotated[float, InUnit("m s-1"), Field(ge=0)] | None = Field(
-        None, description="Noise of one recorded velocity sample where the maker states it."
+        default=None, description="Noise of one recorded velocity sample where the maker states it."
     )
     largest_speed: Annotated[float, InUnit("m s-1"), Field(gt=0)] = Field(
-        10.0, description="Velocities beyond this are flagged fail: no current of the open ocean reaches it."
+        default=10.0,
+        description="Velocities beyond this are flagged fail: no current of the open ocean reaches it.",
     )
 
     @model_validator(mode="after")
@@ -115,51 +117,51 @@ class ProcessingSettings(Settings):
     """The chain that record and virtual samples go through, in this order."""
 
     flags_accepted: tuple[FlagWord, ...] = Field(
-        ("pass", "not_evaluated"),
+        default=("pass", "not_evaluated"),
         min_length=1,
         description="Flags whose samples are kept; all others become gaps.",
     )
     despike: Literal["none", "median", "phase_space"] = Field(
-        "median",
+        default="median",
         description="Spike removal: departure from a moving median in units of 1.4826 MAD, or the "
         "phase-space threshold "
         "method (Goring & Nikora 2002). Spikes become gaps.",
     )
-    despike_window: int = Field(7, ge=3, le=501, description="Samples in the moving median (odd).")
+    despike_window: int = Field(default=7, ge=3, le=501, description="Samples in the moving median (odd).")
     despike_threshold: Annotated[float, Field(gt=1)] = Field(
-        6.0,
+        default=6.0,
         description="Departure, in robust standard deviations, beyond which a sample is a spike (moving "
         "median).",
     )
     largest_gap_filled: int = Field(
-        3,
+        default=3,
         ge=0,
         le=100,
         description="Gaps up to this many samples are filled linearly; longer ones stay gaps.",
     )
     averaging_interval: Annotated[float, InUnit("s"), Field(gt=0)] | None = Field(
-        None,
+        default=None,
         description="Interval of block averages. Absent: the samples as they are; a comparison then takes "
         "the coarser "
         "interval of its two sides.",
     )
     smallest_good_fraction: Annotated[float, Field(gt=0, le=1)] = Field(
-        0.5, description="Share of good samples below which a block average is a gap."
+        default=0.5, description="Share of good samples below which a block average is a gap."
     )
     rotate_to: Annotated[float, InUnit("degree"), Field(ge=-360, le=360)] | None = Field(
-        None,
+        default=None,
         description="Direction that u shall point to, degrees counter-clockwise from the simulation's +x; "
         "absent: no rotation.",
     )
     detrend: Literal["none", "mean", "linear"] = Field(
-        "linear", description="What is removed from each deployment before second moments are formed."
+        default="linear", description="What is removed from each deployment before second moments are formed."
     )
     longest_period: Annotated[float, InUnit("s"), Field(gt=0)] | None = Field(
-        None,
+        default=None,
         description="Fluctuations slower than this are removed by subtracting a moving mean of this length.",
     )
     noise_variance: Literal["keep", "stated", "lag_zero", "plateau"] = Field(
-        "keep",
+        default="keep",
         description="Removal of the noise variance from variances: keep none; stated by the instrument; "
         "extrapolation of the "
         "autocovariance to lag zero; level of the spectrum near the Nyquist frequency.",

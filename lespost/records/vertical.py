@@ -159,11 +159,10 @@ def _checked(depths: np.ndarray, name: str, file: str) -> np.ndarray:
 def onto_fixed_depths(values: np.ndarray, depths: np.ndarray, target: np.ndarray) -> np.ndarray:
     """Profiles (time, level) at moving depths (time, level), interpolated linearly to `target` (level,) [m].
 
-    A value between a good and a missing cell is missing; so is one outside the profile by more than a tenth
-    of the distance between target levels. Runs profile by profile only where depths move.
+    A value between a good and a missing cell is missing; so is one outside the profile: nothing is
+    extrapolated.
     """
     out = np.full((values.shape[0], target.size), np.nan)
-    step = float(np.median(np.diff(target))) if target.size > 1 else np.inf
     for i in range(values.shape[0]):
         known = np.isfinite(depths[i])
         if known.sum() < 2:
@@ -172,7 +171,7 @@ def onto_fixed_depths(values: np.ndarray, depths: np.ndarray, target: np.ndarray
         at, column = depths[i][known][order], values[i][known][order]
         if np.any(np.diff(at) <= 0):
             continue
-        inside = (target >= at[0] - 0.1 * step) & (target <= at[-1] + 0.1 * step)
+        inside = (target >= at[0]) & (target <= at[-1])
         # numpy's interpolation passes a NaN neighbour on to the whole interval, which is the gap wanted here;
         # the value exactly on a good cell is kept even if its neighbour is missing
         result = np.interp(target, at, column)

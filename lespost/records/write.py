@@ -14,6 +14,7 @@ from pathlib import Path
 import numpy as np
 import xarray as xr
 
+from lespost import __version__
 from lespost.errors import RecordError
 from lespost.records.series import FLAG_MEANINGS, FLAG_VALUES, SERIES_VARIABLES
 
@@ -42,6 +43,19 @@ def write_series(series: xr.Dataset, path: Path, attributes: Mapping[str, str] |
     out.attrs.setdefault(
         "summary", "Velocity series in the axes of the simulation, one station per deployment"
     )
+    recorded = out.attrs.get("kind") == "record"
+    depths = np.asarray(series["depth"], dtype=np.float64)
+    defaults = {
+        "history": f"written by lespost {__version__}",
+        "source": "field record" if recorded else "virtual instrument in a large-eddy simulation",
+        "keywords": "ocean turbulence, velocity profiles",
+        "standard_name_vocabulary": "CF Standard Name Table v93",
+        "geospatial_vertical_min": float(depths.min()),
+        "geospatial_vertical_max": float(depths.max()),
+        "geospatial_vertical_positive": "down",
+    }
+    for name, value in defaults.items():
+        out.attrs.setdefault(name, value)
     out.attrs.update(attributes or {})
     origin = str(series["time"].attrs.get("time_origin", "run"))
     out.attrs["time_origin"] = origin
@@ -108,6 +122,7 @@ def write_series(series: xr.Dataset, path: Path, attributes: Mapping[str, str] |
         attrs = {k: v for k, v in variable.attrs.items() if k != "coordinates"}
         if known is not None:
             attrs = {"units": known.units, "long_name": known.long_name, **attrs}
+            attrs["coverage_content_type"] = "physicalMeasurement" if recorded else "modelResult"
             if known.standard_name:
                 attrs["standard_name"] = known.standard_name
         if f"{key}_flag" in series:
