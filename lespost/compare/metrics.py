@@ -15,6 +15,8 @@ from typing import Literal
 import numpy as np
 import xarray as xr
 
+from lespost.records.noise import lag_zero_noise_variance, plateau_noise_variance
+
 
 @dataclass(frozen=True)
 class Metric:
@@ -102,8 +104,6 @@ def noise_estimate(metric: Metric, series: xr.Dataset) -> np.ndarray:
     and plateau estimates (each is an upper bound where turbulence is not resolved), less what was removed;
     NaN where it cannot be known.
     """
-    from lespost.records.noise import lag_zero_noise_variance, plateau_noise_variance
-
     count = series.sizes["depth"]
     if not is_second_moment(metric) or metric.kind == "covariance" or series.sizes["time"] < 16:
         return np.full(count, np.nan)

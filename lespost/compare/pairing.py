@@ -103,7 +103,7 @@ def in_window(series: xr.Dataset, start: float, end: float) -> xr.Dataset:
     end."""
     time = np.asarray(series["time"], dtype=np.float64)
     interval = float(np.median(np.diff(time))) if time.size > 1 else 0.0
-    keep = (time >= start - 1e-6 * interval) & (time < end + 1e-6 * interval)
+    keep = (time >= start - 1e-6 * interval) & (time < end - 1e-6 * interval)
     return series.isel(time=np.flatnonzero(keep))
 
 

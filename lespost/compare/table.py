@@ -26,10 +26,10 @@ from lespost.compare.metrics import (
 )
 from lespost.compare.pairing import DepthPairs, chains_of, duration, in_window, match_windows, pair_depths
 from lespost.compare.settings import ComparisonSettings
-from lespost.compare.uncertainty import Estimate, estimate, not_below_ensemble, paired
+from lespost.compare.uncertainty import Side, estimate, not_below_ensemble, paired
 from lespost.compare.verdicts import Circumstances, Outcome, judge, verdict
 from lespost.errors import DataError, RequestError
-from lespost.records.processing import process
+from lespost.records.processing import PROCESSED, process
 from lespost.records.settings import ProcessingSettings
 
 COLUMNS = (
@@ -199,17 +199,17 @@ def _pair_rows(
         subgrid = _subgrid_share(metric, model, pairs)
         margins = _margins(metric, simulated, pairs, settings)
         for i, depth in enumerate(pairs.depth):
-            model_triple = _triple(two, i)
-            record_triple = not_below_ensemble(
-                _triple(one, i),
+            model_side = Side.of(two, i)
+            record_side = not_below_ensemble(
+                Side.of(one, i),
                 two.by_deployment[:, i],
                 metric.kind == "positive",
                 record.sizes["deployment"],
             )
-            outcome = judge(metric.kind, record_triple, model_triple, margins[i], settings.confidence)
+            outcome = judge(metric.kind, record_side, model_side, margins[i], settings.confidence)
             around = Circumstances(
-                record_samples=record_triple[2],
-                model_samples=model_triple[2],
+                record_samples=record_side.effective_samples,
+                model_samples=model_side.effective_samples,
                 record_noise_share=float(noise[0][i]),
                 model_noise_share=float(noise[1][i]),
                 subgrid_share=float(subgrid[i]),
@@ -223,8 +223,12 @@ def _pair_rows(
                 "units": metric.units,
                 "depth": float(depth),
                 "window": window,
-                **dict(zip(("record_value", "record_se", "record_neff"), record_triple, strict=True)),
-                **dict(zip(("model_value", "model_se", "model_neff"), model_triple, strict=True)),
+                "record_value": record_side.value,
+                "record_se": record_side.standard_error,
+                "record_neff": record_side.effective_samples,
+                "model_value": model_side.value,
+                "model_se": model_side.standard_error,
+                "model_neff": model_side.effective_samples,
                 "difference": outcome.difference,
                 "difference_low": outcome.low,
                 "difference_high": outcome.high,
@@ -233,8 +237,15 @@ def _pair_rows(
                 "ratio_high": outcome.ratio_high,
                 "p_value": outcome.p_value,
             }
-            own = (_rank(record_triple[0], two.by_deployment[:, i]), *remarks)
+            own = (_rank(record_side.value, two.by_deployment[:, i]), *remarks)
             rows.append(_Row(cells, outcome, around, tuple(r for r in own if r)))
+    if not rows:
+        held = [", ".join(sorted(n for n in PROCESSED if n in s)) or "nothing" for s in (recorded, simulated)]
+        raise DataError(
+            f"{where}: none of the quantities {', '.join(settings.quantities)} can be formed on both sides; "
+            "the record holds "
+            f"{held[0]}, the instrument {held[1]}. Choose others in [comparison].quantities."
+        )
     return rows
 
 
@@ -242,10 +253,6 @@ def _selection(pairs: DepthPairs, series: xr.Dataset) -> np.ndarray:
     weights = np.zeros((pairs.record.size, series.sizes["depth"]))
     weights[np.arange(pairs.record.size), pairs.record] = 1.0
     return weights
-
-
-def _triple(e: Estimate, i: int) -> tuple[float, float, float]:
-    return float(e.value[i]), float(e.standard_error[i]), float(e.effective_samples[i])
 
 
 def _share(part: np.ndarray, of: np.ndarray) -> np.ndarray:

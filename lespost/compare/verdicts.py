@@ -14,6 +14,7 @@ from typing import Literal
 import numpy as np
 
 from lespost.compare.settings import ComparisonSettings
+from lespost.compare.uncertainty import Side
 
 Verdict = Literal["agrees", "differs", "cannot tell"]
 
@@ -39,21 +40,21 @@ class Outcome:
     lengthening: float
 
 
-def _degrees_of_freedom(first: float, n_first: float, second: float, n_second: float) -> float:
-    """Welch-Satterthwaite degrees of freedom of the sum of two squared errors with n - 1 each."""
+def _degrees_of_freedom(first: float, first_freedom: float, second: float, second_freedom: float) -> float:
+    """Welch-Satterthwaite degrees of freedom of the sum of two squared errors."""
     total = (first**2 + second**2) ** 2
-    parts = first**4 / max(n_first - 1.0, 1.0) + second**4 / max(n_second - 1.0, 1.0)
+    parts = first**4 / first_freedom + second**4 / second_freedom
     return max(total / parts, 1.0) if parts > 0 else 1e9
 
 
 def judge(
     kind: Literal["mean", "positive", "covariance"],
-    record: tuple[float, float, float],
-    model: tuple[float, float, float],
+    record: Side,
+    model: Side,
     margin: float,
     confidence: float,
 ) -> Outcome:
-    """Tests one pair. record, model: (value, standard error, effective samples).
+    """Tests one pair.
 
     margin: for "positive" the share of the ratio, else in the unit of the quantity. The comparison of
     positive quantities is made on the logarithm of their ratio, whose error is nearly normal where that of a
@@ -61,20 +62,20 @@ def judge(
     """
     from scipy.stats import t as student
 
-    (a, sa, na), (b, sb, nb) = record, model
+    a, sa, b, sb = record.value, record.standard_error, model.value, model.standard_error
     nothing = float("nan")
     if not all(np.isfinite([a, sa, b, sb])):
         return Outcome(a - b, nothing, nothing, nothing, nothing, nothing, nothing, False, nothing)
     alpha = 1.0 - confidence
     error = float(np.hypot(sa, sb))
-    freedom = _degrees_of_freedom(sa, na, sb, nb)
+    freedom = _degrees_of_freedom(sa, record.freedom, sb, model.freedom)
     width = float(student.ppf(1.0 - alpha / 2.0, freedom)) * error
     difference = a - b
     ratio = ratio_low = ratio_high = nothing
     if kind == "positive" and a > 0 and b > 0:
         ra, rb = sa / a, sb / b
         statistic, scale = float(np.log(a / b)), float(np.hypot(ra, rb))
-        freedom = _degrees_of_freedom(ra, na, rb, nb)
+        freedom = _degrees_of_freedom(ra, record.freedom, rb, model.freedom)
         low_limit, high_limit, own, other = float(np.log1p(-margin)), float(np.log1p(margin)), ra, rb
         half = float(student.ppf(1.0 - alpha / 2.0, freedom)) * scale
         ratio, ratio_low, ratio_high = (

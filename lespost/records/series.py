@@ -129,7 +129,8 @@ def compass_to_simulation(
     counter-clockwise of it. For a bearing of 90, u is east and v north. Derived here.
     """
     bearing = np.deg2rad(x_axis_compass_bearing)
-    sine, cosine = np.sin(bearing), np.cos(bearing)
+    # rounded to 15 digits, so that quarter turns are exact and a component at rest stays at zero
+    sine, cosine = np.round(np.sin(bearing), 15), np.round(np.cos(bearing), 15)
     return east * sine + north * cosine, -east * cosine + north * sine
 
 

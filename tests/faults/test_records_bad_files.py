@@ -14,11 +14,11 @@ import netCDF4
 import numpy as np
 import pytest
 import xarray as xr
+
 from lespost.errors import LespostError, RecordError
 from lespost.records.describe import describe
 from lespost.records.read import open_raw, read_record
 from lespost.records.settings import RecordSettings
-
 from tests.unit.records.record_files import moored_profiler
 
 VELOCITY = {n: np.random.default_rng(1).normal(0.0, 0.1, (30, 4)) for n in ("u", "v", "w")}
@@ -157,8 +157,12 @@ def test_packed_integers_with_each_files_own_scale(tmp_path: Path) -> None:
         ("twice.csv", b"time,depth,UCUR,UCUR\nUTC,m,m/s,m/s\n2026-01-01,5,1,1\n", "appears twice"),
         ("ragged.csv", b"time,depth,UCUR\nUTC,m,m/s\n2026-01-01,5\n2026-01-02,5,1\n2026-01-03,5,1\n", "do not have the 3 cells"),
         ("nottime.csv", b"time,depth,UCUR,VCUR\nUTC,m,m/s,m/s\nyesterday,5,0.1,0.1\ntoday,5,0.1,0.1\n", "not an ISO 8601 time"),
-        ("nodepth.csv", b"time,UCUR,VCUR\nUTC,m/s,m/s\n2026-01-01T00:00:00Z,.1,.1\n2026-01-01T00:01:00Z,.1,.1\n", "depth of the sensor"),
-        ("double.csv", b"time,depth,UCUR,VCUR\nUTC,m,m/s,m/s\n2026-01-01,5,1,1\n2026-01-01,5,1,1\n2026-01-02,6,1,1\n", "more than one row"),
+        ("nodepth.csv", b"time,UCUR,VCUR\nUTC,m/s,m/s\n2026-01-01,.1,.1\n2026-01-02,.1,.1\n", "depth of the sensor"),
+        (
+            "double.csv",
+            b"time,depth,UCUR,VCUR\nUTC,m,m/s,m/s\n2026-01-01,5,1,1\n2026-01-01,5,1,1\n2026-01-02,6,1,1\n",
+            "more than one row",
+        ),
         ("novel.csv", b"time,depth,sst\nUTC,m,degC\n2026-01-01T00:00:00Z,5,11\n2026-01-01T00:01:00Z,5,11\n", "no water velocity"),
     ],
 )  # fmt: skip
@@ -201,7 +205,7 @@ def test_truncated_netcdf(tmp_path: Path, share: float) -> None:
     data = moored_profiler(tmp_path / "whole.nc", VELOCITY).read_bytes()
     path = tmp_path / "cut.nc"
     path.write_bytes(data[: int(share * len(data))])
-    with pytest.raises(RecordError, match="cut.nc"):
+    with pytest.raises(RecordError, match=r"cut\.nc"):
         read(path)
 
 

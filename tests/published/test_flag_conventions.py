@@ -8,6 +8,7 @@ layout of current-meter text files of the U.S. National Data Buoy Center (nine-d
 from __future__ import annotations
 
 import pytest
+
 from lespost.records.flags import SCHEMES, scheme_table
 
 

@@ -8,12 +8,12 @@ from pathlib import Path
 import numpy as np
 import pytest
 from click.testing import CliRunner
+
 from lespost.cli.record import command
 from lespost.errors import RecordError
 from lespost.records.describe import describe
 from lespost.records.read import open_raw, read_record
 from lespost.records.settings import RecordSettings
-
 from tests.unit.records.record_files import moored_profiler
 
 
