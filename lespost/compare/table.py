@@ -26,7 +26,7 @@ from lespost.compare.metrics import (
 )
 from lespost.compare.pairing import DepthPairs, chains_of, duration, in_window, match_windows, pair_depths
 from lespost.compare.settings import ComparisonSettings
-from lespost.compare.uncertainty import Side, estimate, not_below_ensemble, paired
+from lespost.compare.uncertainty import Side, estimate, finite_mean, not_below_ensemble, paired
 from lespost.compare.verdicts import Circumstances, Outcome, judge, verdict
 from lespost.errors import DataError, RequestError
 from lespost.records.processing import PROCESSED, process
@@ -288,7 +288,7 @@ def _margins(
         temperature = metric.name == "temperature_mean"
         return np.full(count, settings.temperature_margin if temperature else settings.velocity_margin)
     deviation = [
-        np.sqrt(np.nanmean(model[f"{n}_fluctuation"].values ** 2, axis=(0, 1))) if n in model else np.nan
+        np.sqrt(finite_mean(model[f"{n}_fluctuation"].values ** 2, (0, 1))) if n in model else np.nan
         for n in metric.needs
     ]
     return np.asarray(settings.covariance_margin * (pairs.model @ np.nan_to_num(deviation[0] * deviation[1])))

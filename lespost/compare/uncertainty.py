@@ -40,7 +40,7 @@ class Estimate:
     by_deployment: np.ndarray
 
 
-def _mean(values: np.ndarray, axis: int | tuple[int, ...]) -> np.ndarray:
+def finite_mean(values: np.ndarray, axis: int | tuple[int, ...]) -> np.ndarray:
     """Mean of the finite values, NaN where there are none, without warnings."""
     good = np.isfinite(values)
     with np.errstate(invalid="ignore", divide="ignore"):
@@ -57,7 +57,7 @@ def effective_samples(values: np.ndarray) -> np.ndarray:
     count = values.shape[0]
     good = np.isfinite(values)
     number = good.sum(axis=0)
-    departure = np.where(good, values - _mean(values, 0), 0.0)
+    departure = np.where(good, values - finite_mean(values, 0), 0.0)
     size = 2 * count
     covariance = np.fft.irfft(np.abs(np.fft.rfft(departure, size, axis=0)) ** 2, size, axis=0)[:count]
     pairs = np.fft.irfft(np.abs(np.fft.rfft(good.astype(np.float64), size, axis=0)) ** 2, size, axis=0)[
@@ -102,7 +102,7 @@ def bootstrap_standard_error(values: np.ndarray, count: int, rng: np.random.Gene
 
     times = values.shape[0]
     good = np.isfinite(values)
-    filled = np.where(good, values, _mean(values, 0))
+    filled = np.where(good, values, finite_mean(values, 0))
     out = np.full(values.shape[1], np.nan)
     spread = np.where(good.any(axis=0), filled.std(axis=0), 0.0)
     varying = np.flatnonzero(good.any(axis=0) & (spread > 0))
@@ -122,7 +122,7 @@ def bootstrap_standard_error(values: np.ndarray, count: int, rng: np.random.Gene
         part = np.where(good[:, columns], values[:, columns], 0.0)
         with np.errstate(invalid="ignore", divide="ignore"):
             replicates = (weights @ part) / (weights @ good[:, columns].astype(np.float64))
-        replicates = np.where(np.isfinite(replicates), replicates, _mean(values[:, columns], 0))
+        replicates = np.where(np.isfinite(replicates), replicates, finite_mean(values[:, columns], 0))
         out[columns] = replicates.std(axis=0, ddof=1)
     return out
 
@@ -135,14 +135,14 @@ def estimate(values: np.ndarray, bootstrap_count: int, rng: np.random.Generator)
     deployments it is not below their standard deviation over the square root of their number.
     """
     deployments, times, _ = values.shape
-    by_deployment = _mean(values, 1)
-    value = _mean(values, (0, 1))
-    variance = _mean((values - value) ** 2, (0, 1))
+    by_deployment = finite_mean(values, 1)
+    value = finite_mean(values, (0, 1))
+    variance = finite_mean((values - value) ** 2, (0, 1))
     error = np.full(value.shape, np.nan)
     if times >= FEWEST_TIMES:
-        series = _mean(values, 0)
+        series = finite_mean(values, 0)
         number = effective_samples(series)
-        scatter = _mean((series - _mean(series, 0)) ** 2, 0)
+        scatter = finite_mean((series - finite_mean(series, 0)) ** 2, 0)
         with np.errstate(invalid="ignore", divide="ignore"):
             # n_eff - 1 as the sample variance of n_eff independent values is formed about their own mean
             by_scale = np.sqrt(scatter / np.maximum(number - 1.0, 1e-9))
@@ -150,7 +150,7 @@ def estimate(values: np.ndarray, bootstrap_count: int, rng: np.random.Generator)
     if deployments > 1:
         known = np.isfinite(by_deployment)
         some = np.maximum(known.sum(axis=0), 1)
-        centred = np.where(known, by_deployment - _mean(by_deployment, 0), 0.0)
+        centred = np.where(known, by_deployment - finite_mean(by_deployment, 0), 0.0)
         with np.errstate(invalid="ignore", divide="ignore"):
             across = np.sqrt((centred**2).sum(axis=0) / (some - 1.0) / some)
         error = np.fmax(error, across)

@@ -220,6 +220,27 @@ def test_gaps_do_not_shift_a_value() -> None:
     assert table["record_neff"].iloc[0] < 3000
 
 
+def test_a_cell_without_data_is_a_row_that_cannot_tell() -> None:
+    rng = np.random.default_rng(17)
+    model, record = full(rng, "p", 5), full(rng, "m", 1)
+    record["u"][0, :, 1] = np.nan
+    table = run(model, record, quantities=("u_mean", "uu", "uw", "ww"))
+    blind = table[(table["depth"] == 6.0) & table["quantity"].isin(["u_mean", "uu", "uw"])]
+    assert (blind["verdict"] == "cannot tell").all()
+    assert blind[["record_value", "p_value", "p_adjusted", "ratio"]].isna().all(axis=None)
+    assert (blind["record_neff"] == 0).all()
+    assert np.isfinite(table.set_index(["quantity", "depth"]).loc[("ww", 6.0), "record_value"])
+    model["u"][:, :, 0] = np.nan
+    seen = run(model, record, quantities=("u_mean", "uu", "uw"))
+    assert (seen["verdict"] == "cannot tell").all()
+
+
+def test_no_records_make_an_empty_table() -> None:
+    table = compare({}, {}, settings(), [], np.random.default_rng(0))
+    assert list(table.columns) == list(COLUMNS)
+    assert table.empty
+
+
 def test_nothing_in_common_is_an_error_naming_both_sides() -> None:
     model = make_series({"w": np.zeros((1, 50, 1))}, np.arange(50.0), [5.0], instrument="p")
     record = make_series({"u": np.ones((1, 50, 1))}, np.arange(50.0), [5.0], instrument="m")

@@ -73,6 +73,6 @@ def moored_profiler(
                 q = f.createVariable(f"{name}_qc", "i1", ("time", "depth"), fill_value=np.int8(-127))
                 q.setncatts(dict(QARTOD if flag_attributes is None else flag_attributes))
                 q[:] = flags[name]
-            x.setncatts(dict((variable_attributes or {}).get(name, {})))
             x[:] = np.where(np.isfinite(data), data, -9999.0)
+            x.setncatts(dict((variable_attributes or {}).get(name, {})))
     return path

@@ -109,14 +109,16 @@ def test_standard_names_win_over_misleading_names(tmp_path: Path) -> None:
 )
 def test_numeric_times_against_calendar_arithmetic(reference: datetime, unit: tuple[str, float], start: float) -> None:
     reference = reference.replace(microsecond=0)
-    axis = numeric_times(np.array([start, start + 1.0, start + 2.5]), f"{unit[0]} since {reference:%Y-%m-%d %H:%M:%S}", "standard", "t")
+    numbers = np.array([start, start + 1.0, start + 2.5])
+    axis = numeric_times(numbers, f"{unit[0]} since {reference:%Y-%m-%d %H:%M:%S}", "standard", "t")
     expected = reference.replace(tzinfo=UTC) + timedelta(seconds=start * unit[1])
     assert abs((parse_iso(axis.origin, "t") - expected).total_seconds()) < 1e-3
     np.testing.assert_allclose(axis.seconds, np.array([0.0, 1.0, 2.5]) * unit[1], rtol=1e-9)
 
 
 def test_reference_times_are_read_loosely_and_with_zones() -> None:
-    for text in ("1950-01-01T00:00:00Z", "1950-1-1", "1950-01-01 00:00:0.0", "1950-01-01 02:00 +02:00", "1949-12-31T19:00:00-0500"):
+    midnight = ("1950-01-01T00:00:00Z", "1950-1-1", "1950-01-01 00:00:0.0", "1950-01-01 02:00 +02:00", "1949-12-31T19:00:00-0500")
+    for text in midnight:
         assert numeric_times(np.array([1.0, 2.0]), f"days since {text}", "standard", "t").origin == "1950-01-02T00:00:00Z"
 
 
