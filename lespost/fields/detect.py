@@ -1,0 +1,208 @@
+"""Deciding an arrangement by continuity: candidates are scored on a sample, and the best must win clearly.
+
+What recipe or metadata fix is a pin; the rest is open. A pin that the flow plainly contradicts is refused, an open choice
+without a clear winner is refused as well, with the candidates and the recipe lines that would settle it.
+The scoring itself is `lespost.fields.continuity`; putting the answer to use is `lespost.fields.layout`.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+from lespost.errors import LayoutError
+from lespost.fields.axes import Role
+from lespost.fields.continuity import Horizontal, Score, WOffset
+from lespost.findings import Decision, Finding
+
+#: A winner must beat every different arrangement by this factor ...
+MARGIN = 3.0
+#: ... and be below this residual, unless it is at round-off.
+CREDIBLE = 0.3
+#: Multiple of the rounding error that still counts as round-off, and the least residual that the sums can resolve.
+ROUNDOFF_FACTOR, ROUNDOFF_FLOOR = 5.0, 1e-7
+
+
+@dataclass(frozen=True)
+class Candidate:
+    """roles: of the three axes in space of u, in file order. score: its continuity."""
+
+    roles: tuple[Role, ...]
+    score: Score
+
+    @property
+    def arrangement(self) -> tuple[object, ...]:
+        """What must not stay open: order of axes, direction of z, place of w."""
+        return self.roles, self.score.z_sign, self.score.w_offset
+
+    def words(self) -> str:
+        """The recipe lines of this arrangement."""
+        s = self.score
+        position = w_position(s.w_offset, s.z_sign)
+        surface = "last" if s.z_sign > 0 else "first"
+        axes = ", ".join(f'"{role}"' for role in ("time", *self.roles))
+        text = f'axes = [{axes}], surface = "{surface}", w_position = "{position}"'
+        if s.scheme == "staggered":
+            text += f', u_position = "{s.u_position}", v_position = "{s.v_position}"'
+        return f'{text}, horizontal_scheme = "{s.scheme}" (residual {s.residual:.2g})'
+
+
+@dataclass(frozen=True)
+class Pins:
+    """What is already fixed; None or empty: open. how: where the pins come from, for messages."""
+
+    roles: tuple[Role, ...] | None = None
+    z_sign: int | None = None
+    w_offsets: frozenset[WOffset] = frozenset()
+    w_position: str | None = None
+    u_position: Horizontal | None = None
+    v_position: Horizontal | None = None
+    scheme: str | None = None
+
+    def allow(self, candidate: Candidate) -> bool:
+        """Whether `candidate` agrees with every pin."""
+        s = candidate.score
+        return (
+            self.roles in (None, candidate.roles)
+            and self.z_sign in (None, s.z_sign)
+            and (not self.w_offsets or s.w_offset in self.w_offsets)
+            and (self.w_position is None or w_position(s.w_offset, s.z_sign) == self.w_position)
+            and self.u_position in (None, s.u_position)
+            and self.v_position in (None, s.v_position)
+            and self.scheme in (None, s.scheme)
+        )
+
+
+@dataclass(frozen=True)
+class Verdict:
+    """The chosen arrangement. margin: residual of the best different arrangement / its own (inf if there is none)."""
+
+    candidate: Candidate
+    margin: float
+    evidence: str
+    findings: tuple[Finding, ...]
+
+    def decision(self, subject: str, choice: str, pinned: bool, pin_text: str) -> Decision:
+        """A Decision that quotes continuity, or the pin where there was one."""
+        if pinned:
+            return Decision(subject, choice, "metadata", f"{pin_text}; {self.evidence}")
+        return Decision(subject, choice, "detected", self.evidence)
+
+
+def w_position(offset: WOffset, z_sign: int) -> str:
+    """The recipe's word for an offset in index space."""
+    if offset == "centre":
+        return "centre"
+    if offset in ("faces", "interior"):
+        return "faces" if offset == "faces" else "interior_faces"
+    lower = (offset == "low") == (z_sign > 0)
+    return "faces_without_surface" if lower else "faces_without_bottom"
+
+
+def _effective(score: Score) -> float:
+    """The residual, not below what rounding can tell."""
+    return max(score.residual, ROUNDOFF_FACTOR * score.roundoff, ROUNDOFF_FLOOR)
+
+
+def at_roundoff(score: Score) -> bool:
+    """Whether rounding alone explains the residual."""
+    return score.residual <= max(ROUNDOFF_FACTOR * score.roundoff, ROUNDOFF_FLOOR)
+
+
+def choose(candidates: Sequence[Candidate], pins: Pins, where: str) -> Verdict:
+    """The arrangement of `candidates` that continuity and the pins allow.
+
+    Raises LayoutError where a pin is contradicted, where nothing fits the pins, or where no clear winner exists.
+    """
+    allowed = [c for c in candidates if pins.allow(c)]
+    if not allowed:
+        raise LayoutError(
+            f"{where}: no arrangement fits what recipe and metadata say together ({_pins_text(pins)}); correct [fields] "
+            "w_position, surface, u_position, v_position or horizontal_scheme."
+        )
+    rated = [c for c in candidates if math.isfinite(c.score.residual)]
+    open_choices = {c.arrangement for c in allowed}
+    if not rated:
+        if len(open_choices) > 1:
+            raise LayoutError(
+                f"{where}: the sampled flow is at rest, so continuity cannot decide between {_listed(allowed)}. Write one "
+                "of these lines into [fields]."
+            )
+        first = allowed[0]
+        note = Finding("divergence", "warning", "the sampled flow is at rest; the layout could not be checked by continuity.")
+        return Verdict(first, math.inf, "flow at rest: not checked by continuity", (note,))
+    allowed = [c for c in allowed if math.isfinite(c.score.residual)]
+    best = _best(allowed)
+    rival = min(rated, key=lambda c: c.score.residual)
+    if rival.arrangement not in open_choices and rival.score.residual < 0.1:
+        contradicted = MARGIN * _effective(rival.score) < _effective(best.score) and best.score.residual > 0.02
+        if contradicted:
+            raise LayoutError(
+                f"{where}: the flow is not solenoidal as recipe and metadata lay it out ({best.words()}), but it is as "
+                f"{rival.words()}. Either a label is wrong (axes, direction of z, place of w, u and v exchanged) or "
+                "[fields] must say so: write the second line if it is right."
+            )
+    others = [c for c in allowed if c.arrangement != best.arrangement]
+    nearest = min(others, key=lambda c: c.score.residual) if others else None
+    every = [c for c in rated if c.arrangement != best.arrangement]
+    runner = min(every, key=lambda c: c.score.residual) if every else None
+    margin = _effective(runner.score) / _effective(best.score) if runner else math.inf
+    if nearest is not None:
+        clear = _effective(nearest.score) / _effective(best.score)
+        if clear < MARGIN or not (at_roundoff(best.score) or best.score.residual < CREDIBLE):
+            raise LayoutError(
+                f"{where}: the layout cannot be decided. Continuity on a sample leaves {_listed([best, *_ranked(others)])}. "
+                "Write the right one of these lines into [fields]."
+            )
+    evidence = (
+        f"continuity: rms divergence {best.score.residual:.2g} of its terms (rounding alone: {best.score.roundoff:.1g})"
+    )
+    if runner is not None:
+        evidence += f", next best arrangement {runner.score.residual:.2g}, {margin:.3g} times more"
+    findings: tuple[Finding, ...] = ()
+    if not at_roundoff(best.score):
+        severity = "warning" if best.score.residual > 0.05 else "note"
+        findings = (Finding(
+            "divergence", severity,  # type: ignore[arg-type]
+            f"the rms divergence is {best.score.residual:.2g} of its terms where rounding alone would leave "
+            f"{best.score.roundoff:.1g}: the files hold interpolated, filtered or differently differenced velocities.",
+            best.score.residual, ROUNDOFF_FACTOR * best.score.roundoff, "1",
+        ),)  # fmt: skip
+    return Verdict(best, margin, evidence, findings)
+
+
+def _best(allowed: list[Candidate]) -> Candidate:
+    """The smallest residual; among those that rounding cannot tell apart, the simplest (as they are listed)."""
+    smallest = min(allowed, key=lambda c: c.score.residual)
+    if not at_roundoff(smallest.score):
+        return smallest
+    return next(c for c in allowed if at_roundoff(c.score))
+
+
+def _ranked(candidates: list[Candidate]) -> list[Candidate]:
+    """The best candidate of each arrangement, best first."""
+    found: dict[tuple[object, ...], Candidate] = {}
+    for candidate in sorted(candidates, key=lambda c: c.score.residual):
+        found.setdefault(candidate.arrangement, candidate)
+    return list(found.values())
+
+
+def _listed(candidates: Sequence[Candidate], most: int = 4) -> str:
+    return "; or ".join(c.words() for c in _ranked(list(candidates))[:most])
+
+
+def _pins_text(pins: Pins) -> str:
+    parts = []
+    if pins.roles is not None:
+        parts.append(f"axes {', '.join(pins.roles)}")
+    if pins.z_sign is not None:
+        parts.append(f"surface {'last' if pins.z_sign > 0 else 'first'}")
+    if pins.w_position is not None:
+        parts.append(f"w_position {pins.w_position}")
+    if pins.w_offsets:
+        parts.append(f"levels of w: {', '.join(sorted(pins.w_offsets))}")
+    parts += [f"{n} {p}" for n, p in (("u_position", pins.u_position), ("v_position", pins.v_position)) if p]
+    if pins.scheme:
+        parts.append(f"horizontal_scheme {pins.scheme}")
+    return "; ".join(parts)
