@@ -1,0 +1,5 @@
+"""`python -m toy_fields`."""
+
+from toy_fields.cli import main
+
+main()
