@@ -42,3 +42,9 @@ class Unfinished(LespostError):
     """Work stopped in part and can be resumed by running again (exit code 4)."""
 
     exit_code = 4
+
+
+class Interrupted(Unfinished):
+    """Stopped by the user's interrupt; work done so far is saved (exit code 130)."""
+
+    exit_code = 130

@@ -1,1 +1,1 @@
-"""See DEVELOPERS.md."""
+"""Tasks, threads, memory budget, journal, resume, progress. Knows nothing of turbulence."""

@@ -1,1 +1,1 @@
-"""See DEVELOPERS.md."""
+"""Profiles: the one pass over the bytes, windows, layer depths, production terms."""
