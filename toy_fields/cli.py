@@ -24,6 +24,7 @@ def cli() -> None:
 
     \b
     solve        a small wave-averaged large-eddy run: langmuir, shear or convective, or your own forcing
+    record       an invented field record (OceanSITES/CF) from another realisation of a run
     checksums    write or check the checksums of the shipped data
     """
 
@@ -136,6 +137,50 @@ def solve(context: click.Context, case: str, out: Path, threads: int, replace: b
     fields = dataset(chosen, snapshots).assign_attrs(command=command_line(context))
     write_store(fields, out, replace)
     click.echo(f"{out}: {len(snapshots)} snapshots of {chosen.grid.nx} × {chosen.grid.ny} × {chosen.grid.nz}")
+
+
+@cli.command()
+@click.argument("case", type=click.Choice(["langmuir", "shear", "convective"]))
+@click.option("--out", type=click.Path(path_type=Path), required=True, help="the netCDF file to write")
+@click.option("--seed", type=int, required=True, help="seed of the run; not that of the shipped store")
+@click.option("--begin", type=float, default=16200.0, show_default=True, help="start of the record [s of the run]")
+@click.option("--end", type=float, default=30600.0, show_default=True, help="end of the record [s of the run]")
+@click.option("--head-depth", type=float, default=25.0, show_default=True, help="depth of the profiler [m]")
+@click.option("--beam-noise", type=float, default=0.0015, show_default=True, help="of one beam, one minute [m s-1]")
+@click.option("--noise-seed", type=int, default=71, show_default=True, help="seed of noise and spikes")
+@click.option("--threads", type=click.IntRange(1), default=2, show_default=True)
+@click.option("--replace", is_flag=True, help="write over an existing file")
+@click.pass_context
+def record(
+    context: click.Context, case: str, out: Path, seed: int, begin: float, end: float, head_depth: float,
+    beam_noise: float, noise_seed: int, threads: int, replace: bool,
+) -> None:
+    """Writes an INVENTED field record: a moored profiler in an independent realisation of CASE.
+
+    OceanSITES/CF file with noise, side-lobe contamination, spikes and a gap, all flagged.
+    """
+    import math
+
+    from lespost.constants import EARTH_ROTATION
+    from toy_fields import cases
+    from toy_fields.errors import ToyRequestError
+    from toy_fields.profiler import Profiler
+    from toy_fields.progress import progress
+    from toy_fields.record import RecordPlan, blemish, sample_run, write_record
+    from toy_fields.store import check_target
+
+    check_target(out, replace)
+    original = cases.case(case)
+    if seed == original.initial.seed:
+        raise ToyRequestError(f"--seed {seed} is the seed of the shipped {case} store: a record needs another one.")
+    chosen = cases.changed(original, {"seed": seed})
+    profiler = Profiler(head_depth=head_depth)
+    plan = RecordPlan(begin=begin, end=end, beam_noise=beam_noise, seed=noise_seed)
+    with progress(f"record in {case}", plan.end) as report:
+        clean = sample_run(chosen, profiler, plan, threads, report)
+    latitude = math.degrees(math.asin(chosen.forcing.coriolis_parameter / (2 * EARTH_ROTATION)))
+    write_record(blemish(clean, profiler, plan), chosen, profiler, plan, out, command_line(context), latitude)
+    click.echo(f"{out}: {len(clean.times)} ensembles of {len(profiler.depths)} cells, invented")
 
 
 @cli.command()
