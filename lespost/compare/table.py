@@ -31,6 +31,7 @@ from lespost.compare.verdicts import Circumstances, Outcome, judge, verdict
 from lespost.errors import DataError, RequestError
 from lespost.records.processing import PROCESSED, process
 from lespost.records.settings import ProcessingSettings
+from lespost.statistics.multiple import benjamini_hochberg
 
 COLUMNS = (
     "instrument", "record", "quantity", "units", "depth", "window", "record_value", "record_se", "record_neff",
@@ -304,13 +305,7 @@ def _rank(value: float, deployments: np.ndarray) -> str:
 
 def _finish(rows: Sequence[_Row], settings: ComparisonSettings) -> pd.DataFrame:
     """Adjusted p-values over all rows, verdicts, notes."""
-    from statsmodels.stats.multitest import multipletests
-
-    p_values = np.array([r.outcome.p_value for r in rows], dtype=np.float64)
-    adjusted = np.full(p_values.shape, np.nan)
-    known = np.isfinite(p_values)
-    if known.any():
-        adjusted[known] = multipletests(p_values[known], method="fdr_bh")[1]
+    adjusted = benjamini_hochberg(np.array([r.outcome.p_value for r in rows], dtype=np.float64))
     finished = []
     for row, p in zip(rows, adjusted, strict=True):
         decision, reason = verdict(row.outcome, float(p), row.around, settings)

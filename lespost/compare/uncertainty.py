@@ -12,6 +12,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from lespost.statistics.bootstrap import bootstrap_standard_error
+from lespost.statistics.samples import effective_samples, finite_mean
+
 #: Below this many times the time axis says nothing about the error of its mean.
 FEWEST_TIMES = 8
 
@@ -38,93 +41,6 @@ class Estimate:
     standard_error: np.ndarray
     effective_samples: np.ndarray
     by_deployment: np.ndarray
-
-
-def finite_mean(values: np.ndarray, axis: int | tuple[int, ...]) -> np.ndarray:
-    """Mean of the finite values, NaN where there are none, without warnings."""
-    good = np.isfinite(values)
-    with np.errstate(invalid="ignore", divide="ignore"):
-        return np.asarray(np.where(good, values, 0.0).sum(axis=axis) / good.sum(axis=axis))
-
-
-def effective_samples(values: np.ndarray) -> np.ndarray:
-    """n_eff = n / (1 + 2 sum r_k) along axis 0 of (time, column), the sum up to the first zero crossing of r.
-
-    The autocorrelation is corrected once for the removal of the sample mean, which lowers every r_k by
-    1/n_eff (to first order; derived here). NaN are gaps: lags are averaged over the pairs there are. At least
-    1, at most the number of good samples.
-    """
-    count = values.shape[0]
-    good = np.isfinite(values)
-    number = good.sum(axis=0)
-    departure = np.where(good, values - finite_mean(values, 0), 0.0)
-    size = 2 * count
-    covariance = np.fft.irfft(np.abs(np.fft.rfft(departure, size, axis=0)) ** 2, size, axis=0)[:count]
-    pairs = np.fft.irfft(np.abs(np.fft.rfft(good.astype(np.float64), size, axis=0)) ** 2, size, axis=0)[
-        :count
-    ]
-    with np.errstate(invalid="ignore", divide="ignore"):
-        r = np.where(pairs > 0.5, covariance / np.round(np.maximum(pairs, 1.0)), 0.0)
-        r = r / r[0]
-    r = np.where(np.isfinite(r), r, 0.0)
-    # far lags rest on few pairs; a crossing is looked for in the first half only
-    first = _sum_to_crossing(r[: max(2, count // 2)])
-    with np.errstate(invalid="ignore", divide="ignore"):
-        lost = np.clip(first / number, 0.0, 0.5)
-    corrected = (r + lost) / (1.0 + lost)
-    corrected[0] = 1.0
-    # the correction must not keep a dead autocorrelation above zero for ever: it is summed to the crossing of
-    # the raw one
-    factor = _sum_to_crossing(corrected[: max(2, count // 2)], r[: max(2, count // 2)])
-    with np.errstate(invalid="ignore", divide="ignore"):
-        result = number / np.maximum(factor, 1e-12)
-    constant = covariance[0] <= 0
-    return np.asarray(np.where(number > 0, np.where(constant, number, np.clip(result, 1.0, number)), 0.0))
-
-
-def _sum_to_crossing(r: np.ndarray, crossing_of: np.ndarray | None = None) -> np.ndarray:
-    """1 + 2 sum of r_k for k >= 1 up to the first non-positive value."""
-    below = (r if crossing_of is None else crossing_of) <= 0
-    first = np.where(below.any(axis=0), np.argmax(below, axis=0), r.shape[0])
-    inside = np.arange(r.shape[0])[:, None] < first
-    return np.asarray(2.0 * np.where(inside, r, 0.0).sum(axis=0) - 1.0)
-
-
-def bootstrap_standard_error(values: np.ndarray, count: int, rng: np.random.Generator) -> np.ndarray:
-    """Standard error of the mean along axis 0 of (time, column) by the stationary block bootstrap (Politis &
-    Romano 1994), block length by Politis & White 2004 (with the correction of Patton, Politis & White 2009),
-    both from `arch`.
-
-    Columns of similar block length (to a factor of 2) share their resampled blocks: one matrix of how often
-    each time is drawn gives the replicates of all of them by one product.
-    """
-    from arch.bootstrap import StationaryBootstrap, optimal_block_length
-
-    times = values.shape[0]
-    good = np.isfinite(values)
-    filled = np.where(good, values, finite_mean(values, 0))
-    out = np.full(values.shape[1], np.nan)
-    spread = np.where(good.any(axis=0), filled.std(axis=0), 0.0)
-    varying = np.flatnonzero(good.any(axis=0) & (spread > 0))
-    out[np.flatnonzero(good.any(axis=0) & (spread == 0))] = 0.0
-    lengths: dict[int, list[int]] = {}
-    for column in varying:
-        length = float(optimal_block_length(filled[:, column])["stationary"].iloc[0])
-        length = min(max(length, 1.0), times / 3.0) if np.isfinite(length) else 1.0
-        lengths.setdefault(int(np.ceil(np.log2(length))), []).append(int(column))
-    for power, columns in sorted(lengths.items()):
-        # the mean block length of the group: no shorter than any of its members, and no longer than a third
-        # of the series
-        draws = StationaryBootstrap(min(2.0**power, times / 3.0), np.arange(times), seed=rng)
-        weights = np.empty((count, times))
-        for i, (position, _) in enumerate(draws.bootstrap(count)):
-            weights[i] = np.bincount(position[0], minlength=times)
-        part = np.where(good[:, columns], values[:, columns], 0.0)
-        with np.errstate(invalid="ignore", divide="ignore"):
-            replicates = (weights @ part) / (weights @ good[:, columns].astype(np.float64))
-        replicates = np.where(np.isfinite(replicates), replicates, finite_mean(values[:, columns], 0))
-        out[columns] = replicates.std(axis=0, ddof=1)
-    return out
 
 
 def estimate(values: np.ndarray, bootstrap_count: int, rng: np.random.Generator) -> Estimate:

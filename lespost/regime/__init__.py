@@ -1,1 +1,1 @@
-"""See DEVELOPERS.md."""
+"""Which turbulence regime: anisotropy, frames, the classifier, its independent witnesses, the regime plane."""

@@ -8,7 +8,8 @@ from scipy.stats import norm
 
 from lespost.compare.settings import ComparisonSettings
 from lespost.compare.table import compare
-from lespost.compare.uncertainty import bootstrap_standard_error, effective_samples
+from lespost.statistics.bootstrap import bootstrap_standard_error
+from lespost.statistics.samples import effective_samples
 from lespost.records.settings import ProcessingSettings
 from tests.unit.compare.toy_series import (
     autoregressive,
