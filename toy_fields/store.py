@@ -30,7 +30,7 @@ PRECISION: dict[str, tuple[int, float]] = {
 }
 
 #: Levels per chunk inside a shard.
-LEVELS_PER_CHUNK = 10
+LEVELS_PER_CHUNK = 4
 
 
 def round_values(values: np.ndarray, mantissa_bits: int, step: float = 0.0) -> np.ndarray:
