@@ -77,8 +77,8 @@ class CanonicalArray(BackendArray):
         self.shape = (stored.shape[0], *(plan.size for plan in plans))
         # from stored order of axes to canonical order, and whether that is any change at all
         self._order = (0, *(plan.axis for plan in plans))
-        steps = (1, *(stored.chunks[1:] if stored.chunks is not None else stored.shape[1:]))
-        self._probe = tuple(slice(None, None, max(1, min(int(step), 16))) for step in (steps[i] for i in self._order))
+        steps = (1, *(stored.chunks[1:] if stored.chunks is not None else (max(1, n // 4) for n in stored.shape[1:])))
+        self._probe = tuple(slice(None, None, int(steps[i])) for i in self._order)
 
     def __getitem__(self, key: indexing.ExplicitIndexer) -> Any:
         return indexing.explicit_indexing_adapter(key, self.shape, indexing.IndexingSupport.OUTER, self._select)
@@ -116,7 +116,7 @@ class CanonicalArray(BackendArray):
             item = after[axis]
             if isinstance(item, slice):
                 continue
-            values = np.take(values, item, axis)
+            values = values[(slice(None),) * axis + (item,)]  # an integer makes a view, where np.take would copy
         return values
 
     def _box(self, bounds: list[tuple[int, int]]) -> np.ndarray:

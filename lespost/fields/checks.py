@@ -19,6 +19,8 @@ from lespost.findings import Finding, Hint
 
 #: Levels looked at; all levels of a store whose chunks span the whole depth cost no more.
 SAMPLE_LEVELS = 8
+#: Bytes that the sample may decode: with very large chunks fewer levels are looked at, but at least three.
+SAMPLE_BYTES = 512 << 20
 #: |horizontal mean of w| above this fraction of its rms is not round-off (common practice, no source).
 MEAN_W = 1e-6
 #: Fraction of horizontal variance in the top third of wavenumbers above which the flow is called under-resolved.
@@ -53,8 +55,11 @@ def take(fields: xr.Dataset) -> LevelSample:
         field = fields[name]
         vertical = str(field.dims[1])
         size = field.sizes[vertical]
-        levels = np.unique(np.linspace(0, size - 1, min(SAMPLE_LEVELS, size)).round().astype(int))
-        chunk = field.encoding.get("preferred_chunks", {}).get(vertical, 1)
+        chunks = field.encoding.get("preferred_chunks", {})
+        per_level = math.prod(chunks.values()) * field.dtype.itemsize if chunks else 0
+        count = int(np.clip(SAMPLE_BYTES // (4 * max(per_level, 1)), 3, SAMPLE_LEVELS))
+        levels = np.unique(np.linspace(0, size - 1, min(count, size)).round().astype(int))
+        chunk = chunks.get(vertical, 1)
         groups: dict[int, list[int]] = {}
         for level in levels:
             groups.setdefault(int(level) // max(int(chunk), 1), []).append(int(level))

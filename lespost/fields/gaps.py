@@ -23,7 +23,7 @@ from lespost.findings import Finding
 
 #: Bytes that looking for unwritten snapshots may decode, and the largest number of files opened or values read for it.
 PROBE_BYTES, PROBE_FILES, PROBE_VALUES = 256 << 20, 64, 512
-#: An absent chunk is still water if what adjoins it is below this fraction of what surrounds it.
+#: An absent chunk is still water if what adjoins it is below this fraction of the chunks around it.
 STILL = 0.02
 #: Absent chunks of one variable and time that are judged one by one.
 JUDGED = 32
@@ -158,7 +158,7 @@ def _still_around(field: StackedVariable, missing: np.ndarray, key: tuple[int, .
     """Whether the planes that adjoin an absent chunk are still compared with the chunks that they belong to."""
     assert field.chunks is not None
     chunks, sizes = field.chunks[1:], field.shape[1:]
-    looked = False
+    adjoining, around = [], []
     for axis, step in itertools.product(range(3), (-1, 1)):
         other = list(key)
         other[axis] += step
@@ -167,7 +167,6 @@ def _still_around(field: StackedVariable, missing: np.ndarray, key: tuple[int, .
         box = [slice(k * c, min((k + 1) * c, n)) for k, c, n in zip(other, chunks, sizes, strict=True)]
         values = np.asarray(field.read((slice(t, t + 1), *box))[0], np.float64)
         face = np.take(values, -1 if step < 0 else 0, axis)
-        looked = True
-        if np.sqrt(np.mean(face**2)) > STILL * np.sqrt(np.mean(values**2)):
-            return False
-    return looked
+        adjoining.append(float(np.sqrt(np.mean(face**2))))
+        around.append(float(np.sqrt(np.mean(values**2))))
+    return bool(adjoining) and max(adjoining) <= STILL * max(around)

@@ -8,7 +8,7 @@ from typing import Any, Literal
 
 import numpy as np
 
-from lespost.errors import LayoutError
+from lespost.errors import LayoutError, UnitError
 from lespost.fields.axes import coordinate_of
 from lespost.fields.names import match_name
 from lespost.fields.settings import FieldsSettings
@@ -50,7 +50,12 @@ def length_factor(units: str | None, settings: FieldsSettings, key: str, where: 
         return settings.scales.length
     if not text:
         return 1.0
-    factor, _ = conversion(text, "m", where)
+    try:
+        factor, _ = conversion(text, "m", where)
+    except UnitError:
+        raise UnitError(
+            f'{where}: unit "{text}" does not convert to "m"; write the right one as [fields].units = {{{key} = "m"}}.'
+        ) from None
     return factor
 
 

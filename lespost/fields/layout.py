@@ -109,10 +109,16 @@ def decide(
         candidates: list[Candidate] = []
         pins: list[Pins] = []
         repeated: list[dict[str, bool]] = []
-        for option in options:
-            repeats = _repeats(option, sample, settings)
+        for option in list(options):
+            try:
+                repeats = _repeats(option, sample, settings)
+                candidates += _candidates(option, sample, repeats, settings, swap=decided)
+            except LayoutError:  # one of several assignments of open axes does not fit the sizes
+                if len(options) == 1:
+                    raise
+                options.remove(option)
+                continue
             repeated.append(repeats)
-            candidates += _candidates(option, sample, repeats, settings, swap=decided)
             pins.append(_pins(option, settings, decided))
         if any(math.isfinite(c.score.residual) for c in candidates) or t == 0:
             verdict = _choose(candidates, options, pins, where, decided)
@@ -327,6 +333,7 @@ def _finish(
     position = w_position(score.w_offset, score.z_sign)
     pinned_w = option.found.w_offset is not None or settings.w_position != "auto"
     pinned_u = settings.u_position != "auto" or offset_from_coordinates(option.u_x, option.x) is not None
+    pinned_v = settings.v_position != "auto" or offset_from_coordinates(option.v_y, option.y) is not None
     decisions = [
         verdict.decision("order of axes", ", ".join(option.roles["u"]), decided, axes["u"].evidence),
         verdict.decision(
@@ -335,7 +342,7 @@ def _finish(
         ),
         verdict.decision("w position", position, pinned_w, "levels and coordinate of w, or recipe"),
         verdict.decision("u position", score.u_position, pinned_u, "coordinate of u, or recipe"),
-        verdict.decision("v position", score.v_position, pinned_u, "coordinate of v, or recipe"),
+        verdict.decision("v position", score.v_position, pinned_v, "coordinate of v, or recipe"),
         verdict.decision("horizontal scheme", score.scheme, settings.horizontal_scheme != "auto", "recipe"),
         Decision("x spacing", f"{x.spacing:.8g} m", x.how, x.evidence),
         Decision("y spacing", f"{y.spacing:.8g} m", y.how, y.evidence),

@@ -15,7 +15,7 @@ import xarray as xr
 
 from lespost.errors import DataError, LayoutError
 from lespost.fields import axes as axes_module
-from lespost.fields import checks, gaps, hints
+from lespost.fields import checks, gaps, hints, netcdf
 from lespost.fields.axes import Axes
 from lespost.fields.canonical import AxisPlan, CanonicalArray, variable
 from lespost.fields.fingerprint import fingerprint
@@ -55,9 +55,12 @@ def open_fields(settings: FieldsSettings, base: Path) -> OpenedFields:
     Nothing but headers, coordinates and a small sample is read here. Raises DataError for files that cannot be used,
     LayoutError where the layout cannot be decided, UnitError and RecipeError as their names say.
     """
-    collection = collect(settings, base)
-    choice = recognise(collection, settings)
-    return assemble(collection, choice, settings)
+    try:
+        collection = collect(settings, base)
+        choice = recognise(collection, settings)
+        return assemble(collection, choice, settings)
+    finally:
+        netcdf.handles.close_all()  # an open handle would keep the simulation from writing on
 
 
 def recognise(collection: Collection, settings: FieldsSettings) -> Choice:

@@ -80,7 +80,9 @@ def clock(
 
 def _time_factor(name: str, where: str) -> tuple[float, float]:
     if name.lower().rstrip("s") in ("month", "year", "common_year"):
-        raise UnitError(f'{where}: a {name.rstrip("s")} has no fixed length; give times in s, min, h or d.')
+        raise UnitError(
+            f'{where}: a {name.rstrip("s")} has no fixed length; write [fields].time_unit in s, min, h or d, or use time_from.'
+        )
     try:
         return conversion(name, "s", where)
     except UnitError:
@@ -179,7 +181,9 @@ def join_pieces(pieces: list[Piece], overlap: Literal["refuse", "later", "earlie
     "later": a piece that starts later replaces what earlier ones hold from its first time on; "earlier": it only adds what
     comes after them. labels: file names by file number, for messages. Raises DataError when "refuse" meets an overlap.
     """
-    parts = [part for piece in pieces if len(piece.seconds) for part in increasing_stretches(piece, overlap, labels[piece.file])]
+    parts = [
+        part for piece in pieces if len(piece.seconds) for part in increasing_stretches(piece, overlap, labels[piece.file])
+    ]
     if len({part.file for part in parts}) == len(parts):
         parts.sort(key=lambda part: (part.seconds[0], part.file))
     seconds, file, index = (np.empty(0), np.empty(0, np.int64), np.empty(0, np.int64))
