@@ -76,7 +76,7 @@ def changed(original: Case, changes: Mapping[str, Any]) -> Case:
 
     Raises ToyRequestError for a name that none of them has, and whatever the settings themselves refuse.
     """
-    parts = {"grid": original.grid, "forcing": original.forcing, "initial": original.initial, "subgrid": original.subgrid}
+    parts: dict[str, Any] = {"grid": original.grid, "forcing": original.forcing, "initial": original.initial, "subgrid": original.subgrid}
     by_part: dict[str, dict[str, Any]] = {part: {} for part in parts}
     own: dict[str, Any] = {}
     for key, value in changes.items():
@@ -87,5 +87,5 @@ def changed(original: Case, changes: Mapping[str, Any]) -> Case:
             own[key] = value
         else:
             raise ToyRequestError(f'setting "{key}" is not known to the solver.')
-    replaced = {part: replace(settings, **by_part[part]) for part, settings in parts.items()}
+    replaced: dict[str, Any] = {part: replace(settings, **by_part[part]) for part, settings in parts.items()}
     return replace(original, **replaced, **own)

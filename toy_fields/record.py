@@ -64,7 +64,7 @@ def sample_run(
     progress: Callable[[float, int], None] | None = None,
 ) -> Recorded:
     """Runs the case and samples it; the result has no noise and all flags good."""
-    pings = int(round(plan.ensemble / plan.ping_interval))
+    pings = round(plan.ensemble / plan.ping_interval)
     ensembles = int((plan.end - plan.begin) / plan.ensemble + 1e-9)
     times = plan.begin + (np.arange(ensembles) + 0.5) * plan.ensemble
     stepper = start(replace(case, output_times=(plan.end,)), threads)
@@ -121,7 +121,8 @@ def write_record(
         _axis(file, "TIME", days, standard_name="time", long_name="time of the ensemble's centre", axis="T",
               units="days since 1950-01-01T00:00:00Z", calendar="standard", valid_min=0.0, valid_max=90000.0)
         _axis(file, "DEPTH", profiler.depths, standard_name="depth", long_name="depth of the cell's centre",
-              units="m", positive="down", axis="Z", reference="sea_level", coordinate_reference_frame="urn:ogc:def:crs:EPSG::5831")
+              units="m", positive="down", axis="Z", reference="sea_level",
+              coordinate_reference_frame="urn:ogc:def:crs:EPSG::5831")
         _axis(file, "LATITUDE", np.array([latitude]), standard_name="latitude", long_name="invented latitude",
               units="degrees_north", axis="Y", valid_min=-90.0, valid_max=90.0)
         _axis(file, "LONGITUDE", np.array([0.0]), standard_name="longitude", long_name="invented longitude",

@@ -6,7 +6,7 @@ into the ocean (cooling is negative). The Stokes drift enters as means over the 
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from typing import Literal
 
 import numpy as np
@@ -46,8 +46,8 @@ class Ramp:
         return float(np.interp(time, self.times, self.values))
 
 
-def _constant(value: float) -> Ramp:
-    return field(default_factory=lambda: Ramp.constant(value))  # type: ignore[no-any-return]
+#: Nothing, at all times.
+NONE = Ramp((0.0,), (0.0,))
 
 
 @dataclass(frozen=True)
@@ -61,13 +61,13 @@ class Forcing:
     specific_heat [J kg-1 K-1].
     """
 
-    friction_velocity: Ramp = _constant(0.0)
-    stress_direction: Ramp = _constant(0.0)
-    surface_stokes_drift: Ramp = _constant(0.0)
-    stokes_direction: Ramp = _constant(0.0)
+    friction_velocity: Ramp = NONE
+    stress_direction: Ramp = NONE
+    surface_stokes_drift: Ramp = NONE
+    stokes_direction: Ramp = NONE
     stokes_wavenumber: float = 0.0
     stokes_shape: Literal["exponential", "linear"] = "exponential"
-    surface_heat_flux: Ramp = _constant(0.0)
+    surface_heat_flux: Ramp = NONE
     tracer_flux: float = 0.0
     coriolis_parameter: float = 0.0
     thermal_expansion: float = 2.0e-4

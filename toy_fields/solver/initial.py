@@ -63,5 +63,5 @@ class Initial:
         weights = np.exp(-0.5 * ((grid.z[:, None] - grid.z[None, :]) / scale) ** 2)
         inside = -grid.z < self.mixed_layer_depth
         modes = np.einsum("kl,lji->kji", weights * inside[:, None], modes)
-        spread = float(np.std(transforms.to_physical(modes)[inside]))
+        spread = float(np.std(transforms.to_physical(modes)[inside])) if inside.any() else 0.0
         return modes / spread if spread > 0 else modes

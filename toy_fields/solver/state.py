@@ -24,10 +24,8 @@ class State:
         """A state at rest."""
         centre = (grid.nz, *grid.modes_shape)
         face = (grid.nz + 1, *grid.modes_shape)
-        return cls(
-            *(np.zeros(shape, dtype=np.complex128) for shape in (centre, centre, face, centre)),
-            np.zeros(centre, dtype=np.complex128) if with_tracer else None,
-        )
+        u, v, w, theta = (np.zeros(shape, dtype=np.complex128) for shape in (centre, centre, face, centre))
+        return cls(u, v, w, theta, np.zeros(centre, dtype=np.complex128) if with_tracer else None)
 
     def scalar(self, name: str) -> np.ndarray:
         """The scalar of this name."""
