@@ -13,7 +13,6 @@ from typing import Literal
 from lespost.errors import LayoutError
 from lespost.fields.settings import FieldsSettings
 from lespost.fields.variable import RawFile, RawVariable
-from lespost.findings import Decision
 from lespost.units import convertible
 
 Role = Literal["time", "z", "y", "x"]
@@ -166,9 +165,3 @@ def assign(file: RawFile, variable: RawVariable, settings: FieldsSettings) -> Ax
         found[open_axis] = (last, f"the remaining axis is {last}")
     evidence = ", ".join(text for _, text in found if text) or "no name or attribute"
     return Axes(tuple(roles), evidence, "metadata" if None not in roles else "detected")
-
-
-def decision(variable: RawVariable, axes: Axes) -> Decision:
-    """What was decided about the axes of one variable, for printing."""
-    order = ", ".join(f"{dim} = {role or 'open'}" for dim, role in zip(variable.dims, axes.roles, strict=True))
-    return Decision(f"axes of {variable.name}", order, axes.how, axes.evidence)

@@ -159,7 +159,7 @@ def _opened(opened: OpenedFields) -> dict[str, Any]:
         "hints": opened.hints,
         "costs": read_costs(data),
         "layout": {
-            "axes": score["order of axes"].choice.split(", "),
+            "axes": _common_axes(data),
             "surface": score["surface"].choice.split(" ")[0],
             "w_position": score["w position"].choice,
             "u_position": score["u position"].choice,
@@ -220,13 +220,10 @@ def propose_settings(report: FieldsReport) -> dict[str, Any]:
         keys["names"] = {**keys.get("names", {}), **names}
     if report.layout:
         layout = dict(report.layout)
-        shared = {v.dims for v in report.variables if v.ours in ("u", "v", "w")}
-        ranks = {len(dims) for dims in shared}
         axes = layout.pop("axes")
-        # one line of axes can only stand for files in which every field is ordered alike
         order = next((d for d in report.decisions if d.subject == "order of axes"), None)
-        if len(ranks) == 1 and order is not None and order.how == "detected":
-            keys["axes"] = (["time", *axes] if ranks == {4} else axes) if _time_leads(report) else keys.get("axes", axes)
+        if axes and order is not None and order.how == "detected":
+            keys["axes"] = axes
         keys.update(layout)
     try:
         FieldsSettings.model_validate(keys)
@@ -235,10 +232,10 @@ def propose_settings(report: FieldsReport) -> dict[str, Any]:
     return keys
 
 
-def _time_leads(report: FieldsReport) -> bool:
-    """Whether the time axis of u comes first in the files (it need not in Fortran-ordered ones)."""
-    u = next(v for v in report.variables if v.ours == "u")
-    return len(u.dims) == 3 or u.shape[0] == max(1, report.snapshots) or report.files > 1
+def _common_axes(data: xr.Dataset) -> list[str]:
+    """The stored order of axes, empty where the fields differ in it (one line of axes cannot stand for them)."""
+    orders = {str(field.attrs["source_axes"]) for field in data.data_vars.values()}
+    return orders.pop().split() if len(orders) == 1 else []
 
 
 def _lists(value: Any) -> Any:

@@ -20,6 +20,7 @@ import numpy as np
 from lespost.errors import DataError, RecipeError
 from lespost.fields import netcdf, raw, zarr_store
 from lespost.fields.axes import coordinate_of, name_role, time_dimension
+from lespost.fields.hint_table import differences
 from lespost.fields.paths import Kind, expand, sniff
 from lespost.fields.settings import FieldsSettings
 from lespost.fields.variable import RawFile, RawVariable
@@ -145,6 +146,7 @@ def _collect_netcdf(paths: list[Path], settings: FieldsSettings) -> Collection:
     entries: list[FileEntry] = []
     findings: list[Finding] = []
     wanted: set[str] | None = None
+    other_run: Finding | None = None
     for path in paths:
         try:
             file = netcdf.read_header(path, wanted)
@@ -155,6 +157,8 @@ def _collect_netcdf(paths: list[Path], settings: FieldsSettings) -> Collection:
                 signatures[signature] = len(templates)
                 templates.append(file)
             entries.append(_entry(path, signatures[signature], file, settings))
+            note = _two_runs(templates[0], file) if not other_run else None
+            other_run = other_run or note
         except DataError as error:
             if not settings.allow_gaps:
                 raise DataError(f"{error}{_last_good(entries)}") from None
@@ -163,10 +167,25 @@ def _collect_netcdf(paths: list[Path], settings: FieldsSettings) -> Collection:
         wanted = {name for template in templates if (name := time_name(template, settings)) is not None}
     if not entries:
         raise DataError(f"{paths[0]}: none of the {len(paths)} files can be read; see the messages above each.")
+    complete = not findings
+    findings += [other_run] if other_run is not None else []
     collection = Collection("netcdf", tuple(templates), tuple(entries), (), tuple(findings))
-    if not findings:
+    if complete:
         _save(cache, collection)
     return collection
+
+
+def _two_runs(first: RawFile, other: RawFile) -> Finding | None:
+    """A warning if two files state different forcing."""
+    different = differences(first, other)
+    if not different:
+        return None
+    return Finding(
+        "files-differ", "warning",
+        f"the files state different forcing ({', '.join(different)}): if they are two runs, give each its own recipe; if the "
+        "forcing changes within the run, state it in [forcing].",
+        float(len(different)), 0.0, "attributes",
+    )  # fmt: skip
 
 
 def _last_good(entries: list[FileEntry]) -> str:
@@ -186,7 +205,8 @@ def _collect_stores(paths: list[Path], settings: FieldsSettings) -> Collection:
             raise DataError(f"{path}: the zarr store holds no numeric array; give the store (or group) that holds u, v, w.")
         entries.append(_entry(path, len(templates), file, settings))
         templates.append(file)
-    return Collection("zarr", tuple(templates), tuple(entries))
+    notes = [note for file in templates[1:] if (note := _two_runs(templates[0], file)) is not None]
+    return Collection("zarr", tuple(templates), tuple(entries), (), tuple(notes[:1]))
 
 
 def _collect_raw(settings: FieldsSettings, base: Path) -> Collection:
@@ -256,11 +276,12 @@ def _load(cache: Path | None, paths: list[Path]) -> Collection | None:
             FileEntry(paths[i], template, count, None if numbers is None else tuple(numbers))
             for i, (template, count, numbers) in enumerate(stored["entries"])
         )
+        findings = tuple(Finding(**finding) for finding in stored["findings"])
         if len(entries) != len(paths):
             return None
     except (ValueError, KeyError, TypeError, IndexError, OSError):
         return None  # a damaged cache is only a lost cache: the files are indexed again
-    return Collection("netcdf", templates, entries)
+    return Collection("netcdf", templates, entries, (), findings)
 
 
 def _save(cache: Path | None, collection: Collection) -> None:
@@ -270,6 +291,7 @@ def _save(cache: Path | None, collection: Collection) -> None:
     stored = {
         "templates": [first[i] for i in range(len(collection.templates))],
         "entries": [(e.template, e.count, e.numbers) for e in collection.entries],
+        "findings": [finding.to_dict() for finding in collection.findings],
     }
     with suppress(OSError):
         partial = cache.with_suffix(f".{os.getpid()}")

@@ -13,7 +13,7 @@ from typing import Any
 import numpy as np
 import xarray as xr
 
-from lespost.errors import DataError, LayoutError
+from lespost.errors import LayoutError
 from lespost.fields import axes as axes_module
 from lespost.fields import checks, gaps, hints, netcdf
 from lespost.fields.axes import Axes
@@ -192,11 +192,19 @@ def _canonical(
     array = CanonicalArray(field, (z_plan, y_plan, x_plan), name, seconds, factor, offset)
     attrs: dict[str, Any] = {
         "units": unit, "long_name": LONG_NAMES.get(name, name.replace("_", " ")), "cell_methods": "time: point",
-        "source_name": field.name,
+        "source_name": field.name, "source_axes": " ".join(_stored_order(field, roles)),
     }  # fmt: skip
     if field.packed:
         attrs["packed_resolution"] = abs(float(np.ravel(field.attrs.get("scale_factor", 1.0))[0]) * factor)
     return variable(array, ("time", z_dim, y_dim, x_dim), attrs)
+
+
+def _stored_order(field: StackedVariable, roles: tuple[str, ...]) -> list[str]:
+    """The axes as the file has them, time included."""
+    order = list(roles)
+    if field.time_axis is not None:
+        order.insert(field.time_axis, "time")
+    return order
 
 
 def _z_plan(name: str, field: StackedVariable, layout: Layout, decisions: list[Decision]) -> tuple[AxisPlan, str]:
@@ -239,13 +247,3 @@ def _horizontal_plan(
     if not staggered:
         return AxisPlan(axis, count, centre.reversed), role
     return AxisPlan(axis, count, centre.reversed, roll=1 if position == "high_face" else 0), f"{role}_face"
-
-
-def must_hold(dataset: xr.Dataset, names: tuple[str, ...], purpose: str) -> None:
-    """Raise DataError if the dataset lacks a field that `purpose` needs."""
-    missing = [name for name in names if name not in dataset]
-    if missing:
-        raise DataError(
-            f"{dataset.attrs.get('source', 'fields')}: {purpose} needs {', '.join(missing)}, which the files do not hold "
-            "(or which was not recognised: write [fields].names)."
-        )

@@ -6,7 +6,6 @@ from a memory map, so that only the pages needed are read.
 
 from __future__ import annotations
 
-import math
 from dataclasses import dataclass
 from pathlib import Path
 
@@ -157,8 +156,3 @@ def split_names(raw: RawSettings) -> dict[str, tuple[str, ...]]:
     for name, pattern in raw.files.items():
         grouped[pattern] = (*grouped.get(pattern, ()), name)
     return grouped
-
-
-def snapshot_bytes(raw: RawSettings, names: tuple[str, ...]) -> int:
-    """Bytes of field values at one time."""
-    return sum(math.prod(variable_shape(raw, name)) for name in names) * np.dtype(raw.dtype).itemsize

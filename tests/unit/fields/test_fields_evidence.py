@@ -190,6 +190,15 @@ def test_velocity_that_includes_the_drift_is_suspected(kit, tmp_path: Path, kind
     assert declared.dataset.attrs["velocity_kind"] == "lagrangian" and "lagrangian-velocity" not in codes(declared)
 
 
+def test_two_runs_in_one_folder_are_suspected(kit, flow, tmp_path: Path) -> None:
+    variables = kit.standard(flow)
+    kit.write_netcdf(tmp_path / "one.nc", variables, {"us0": 0.068, "ustar": 0.0061})
+    variables["time"] = (("time",), flow.time + 1800.0, {"units": "s"})
+    kit.write_netcdf(tmp_path / "two.nc", variables, {"us0": 0.0, "ustar": 0.0061})
+    finding = next(f for f in kit.opened(tmp_path).findings if f.code == "files-differ")
+    assert "us0 = 0.068 in one.nc and 0 in two.nc" in finding.message and "ustar" not in finding.message
+
+
 def test_chunks_across_levels_are_said(kit, flow, tmp_path: Path) -> None:
     found = kit.opened(kit.write_zarr(tmp_path / "a.zarr", kit.standard(flow), chunks=(1, 10, 12, 16)))  # R18
     assert next(f for f in found.findings if f.code == "chunk-shape").value == 10.0
@@ -214,19 +223,22 @@ def test_report_and_proposal(kit, flow, tmp_path: Path) -> None:
     kit.same(kit.opened(path, **{k: v for k, v in proposal.items() if k != "path"}), flow)
 
 
+@pytest.mark.parametrize("time_last", [False, True])
 @pytest.mark.parametrize("turned", [False, True])
-def test_a_proposal_makes_detection_unnecessary(kit, tmp_path: Path, turned: bool) -> None:
+def test_a_proposal_makes_detection_unnecessary(kit, tmp_path: Path, turned: bool, time_last: bool) -> None:
     flow = kit.make_flow(nx=12, ny=12, nz=12)
     arrays = {"u": flow.u, "v": flow.v, "w": flow.w[:, :-1]}
     if turned:
         arrays = {n: np.ascontiguousarray(a.swapaxes(2, 3)) for n, a in arrays.items()}
-    plain = {n: (("time", "a", "b", "c"), a, {}) for n, a in arrays.items()}
+    dims = ("a", "b", "c", "time") if time_last else ("time", "a", "b", "c")
+    plain = {n: (dims, np.ascontiguousarray(np.moveaxis(a, 0, 3 if time_last else 0)), {}) for n, a in arrays.items()}
     plain["time"] = (("time",), flow.time, {"units": "s"})
-    path = kit.write_netcdf(tmp_path / "a.nc", plain)
+    path = kit.write_netcdf(tmp_path / "a.nc", plain, unlimited=None)
     settings = FieldsSettings(path=str(path), dx=2.5, dy=3.0, dz=20 / 12)
     report = describe_path([path], settings)
     proposal = propose_settings(report)
-    assert proposal["axes"] == (["time", "z", "x", "y"] if turned else ["time", "z", "y", "x"])
+    space = ["z", "x", "y"] if turned else ["z", "y", "x"]
+    assert proposal["axes"] == ([*space, "time"] if time_last else ["time", *space])
     assert proposal["surface"] == "last" and proposal["w_position"] == "faces_without_surface"
     found = kit.opened(path, **{k: v for k, v in proposal.items() if k != "path"})
     kit.same(found, flow, ("u", "v", "w"))

@@ -193,12 +193,14 @@ def test_handles_are_given_back_and_rewritten_files_noticed(kit, flow, tmp_path:
 def test_the_canonical_layer_costs_next_to_nothing(kit, tmp_path: Path) -> None:
     import zarr
 
-    tile = kit.make_flow(nx=16, ny=16, nz=64, nt=1)
+    tile = kit.make_flow(nx=16, ny=16, nz=128, nt=1)
     tiled = {n: np.tile(a, (1, 1, 14, 14)) for n, a in tile.with_names().items()}
+    noise = np.random.default_rng(3).normal(size=tiled["theta"].shape).astype("f4")
+    tiled["theta"] += noise  # a tile alone compresses a hundredfold, which no flow does
     base = replace(tile, **tiled, x=2.5 * np.arange(224), y=3.0 * np.arange(224))
     path = kit.write_zarr(tmp_path / "a.zarr", kit.standard(base), chunks=(1, 16, 224, 224))
     data = kit.opened(path).dataset
-    stored = zarr.open_array(path / "u", mode="r")
+    stored, field = zarr.open_array(path / "theta", mode="r"), data["theta"]
 
     def seconds(read) -> float:
         start = time.perf_counter()
@@ -208,7 +210,7 @@ def test_the_canonical_layer_costs_next_to_nothing(kit, tmp_path: Path) -> None:
     # the machine may be shared: the best of many turns of each, taken in turn, in a few rounds
     ratios = []
     for _ in range(6):
-        raw, ours = np.array([(seconds(lambda: stored[0]), seconds(lambda: data["u"][0].values)) for _ in range(20)]).T
+        raw, ours = np.array([(seconds(lambda: stored[0]), seconds(lambda: field[0].values)) for _ in range(20)]).T
         ratios.append(ours.min() / raw.min())
         if ratios[-1] < 1.05:
             break
