@@ -76,7 +76,9 @@ def changed(original: Case, changes: Mapping[str, Any]) -> Case:
 
     Raises ToyRequestError for a name that none of them has, and whatever the settings themselves refuse.
     """
-    parts: dict[str, Any] = {"grid": original.grid, "forcing": original.forcing, "initial": original.initial, "subgrid": original.subgrid}
+    parts: dict[str, Any] = {
+        "grid": original.grid, "forcing": original.forcing, "initial": original.initial, "subgrid": original.subgrid,
+    }
     by_part: dict[str, dict[str, Any]] = {part: {} for part in parts}
     own: dict[str, Any] = {}
     for key, value in changes.items():

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import os
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass, field
 
@@ -61,7 +60,7 @@ class Snapshot:
 
 def start(case: Case, threads: int = 1) -> Stepper:
     """A stepper at time 0 of the case."""
-    numba.set_num_threads(max(1, min(threads, os.cpu_count() or 1)))
+    numba.set_num_threads(max(1, min(threads, int(vars(numba.config)["NUMBA_NUM_THREADS"]))))
     transforms = HorizontalTransforms(case.grid, threads)
     state = case.initial.state(case.grid, case.forcing, transforms)
     equations = Equations(
