@@ -18,7 +18,7 @@ from lespost import __version__
 from lespost.errors import LespostError
 
 #: Commands in the order a newcomer meets them.
-COMMANDS = ("inspect", "run", "scales", "waves", "record", "laws", "page")
+COMMANDS = ("inspect", "run", "scales", "waves", "record", "page")
 
 #: Packages whose versions `--version` reports, because a bug report needs them.
 STACK = ("numpy", "scipy", "xarray", "dask", "zarr", "numba", "netCDF4", "gsw", "pyfftw", "matplotlib")

@@ -71,7 +71,7 @@ def compare(
     """The comparison table with the columns `COLUMNS`.
 
     samples: raw series of the virtual instruments by name; records: raw series of the records by name; both
-    as made by `lespost.records.series.make_series` (before the chain: the chain is applied here, to both
+    as made by `lespost.series.make_series` (before the chain: the chain is applied here, to both
     sides). windows: of the run; empty: the whole sample is one window called "all". rng drives the bootstrap
     only. Values are in SI; NaN where a number cannot be known.
 

@@ -169,8 +169,8 @@ def run_tasks(
     largest = max(open_tasks, key=lambda task: task.memory, default=None)
     if largest is not None and largest.memory > settings.memory:
         raise RequestError(
-            f"[compute].memory = {settings.memory / 1e6:.0f} MB is not enough for {largest.label}, which needs "
-            f"{largest.memory / 1e6:.0f} MB: raise it to at least that."
+            f"[compute].memory = {settings.memory / 1e6:.3g} MB is not enough for {largest.label}, which needs "
+            f"{largest.memory / 1e6:.3g} MB: raise it to at least that."
         )
     groups: collections.deque[list[Task]] = collections.deque()
     for task in open_tasks:

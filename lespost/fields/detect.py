@@ -36,16 +36,23 @@ class Candidate:
         """What must not stay open: order of axes, direction of z, place of w."""
         return self.roles, self.score.z_sign, self.score.w_offset
 
-    def words(self) -> str:
-        """The recipe lines of this arrangement."""
+    def keys(self) -> dict[str, str]:
+        """The recipe keys of this arrangement, as TOML values."""
         s = self.score
-        position = w_position(s.w_offset, s.z_sign)
-        surface = "last" if s.z_sign > 0 else "first"
         axes = ", ".join(f'"{role}"' for role in ("time", *self.roles))
-        text = f'axes = [{axes}], surface = "{surface}", w_position = "{position}"'
+        found = {
+            "axes": f"[{axes}]",
+            "surface": '"last"' if s.z_sign > 0 else '"first"',
+            "w_position": f'"{w_position(s.w_offset, s.z_sign)}"',
+        }
         if s.scheme == "staggered":
-            text += f', u_position = "{s.u_position}", v_position = "{s.v_position}"'
-        return f'{text}, horizontal_scheme = "{s.scheme}" (residual {s.residual:.2g})'
+            found |= {"u_position": f'"{s.u_position}"', "v_position": f'"{s.v_position}"'}
+        return found | {"horizontal_scheme": f'"{s.scheme}"'}
+
+    def words(self, only: frozenset[str] | None = None) -> str:
+        """The recipe line of this arrangement (of the keys in `only`) and its residual."""
+        line = ", ".join(f"{key} = {value}" for key, value in self.keys().items() if only is None or key in only)
+        return f"{line} (residual {self.score.residual:.2g})" if math.isfinite(self.score.residual) else line
 
 
 @dataclass(frozen=True)
@@ -126,8 +133,8 @@ def choose(candidates: Sequence[Candidate], pins: Pins, where: str) -> Verdict:
     if not rated:
         if len(open_choices) > 1:
             raise LayoutError(
-                f"{where}: the sampled flow is at rest, so continuity cannot decide between {_listed(allowed)}. Write one "
-                "of these lines into [fields]."
+                f"{where}: the sampled flow is at rest, so continuity cannot decide {' and '.join(sorted(_open_keys(allowed)))}. "
+                f"Write them into [fields], for example {allowed[0].words(_open_keys(allowed))}."
             )
         first = allowed[0]
         note = Finding("divergence", "warning", "the sampled flow is at rest; the layout could not be checked by continuity.")
@@ -189,7 +196,15 @@ def _ranked(candidates: list[Candidate]) -> list[Candidate]:
 
 
 def _listed(candidates: Sequence[Candidate], most: int = 4) -> str:
-    return "; or ".join(c.words() for c in _ranked(list(candidates))[:most])
+    """What distinguishes the best candidates, as alternatives; the soft choices (scheme, u, v) follow from these."""
+    shown = _ranked(list(candidates))[:most]
+    return "; or ".join(c.words(_open_keys(shown) or None) for c in shown)
+
+
+def _open_keys(candidates: Sequence[Candidate]) -> frozenset[str]:
+    """The keys in which arrangements differ."""
+    tables = [c.keys() for c in candidates]
+    return frozenset(k for k in ("axes", "surface", "w_position") if len({table[k] for table in tables}) > 1)
 
 
 def _pins_text(pins: Pins) -> str:

@@ -59,7 +59,7 @@ def dissipation_from_scales(friction_velocity: float, surface_stokes_drift: floa
     if np.isnan(ustar) or not ustar > 0:
         return np.nan, np.nan, np.nan
     shear = np.nan if np.isnan(drift) else 2.0 if drift <= 0 else float(2.0 * -np.expm1(-0.5 * np.sqrt(ustar / drift)))
-    convective = np.nan if np.isnan(buoyancy_flux) else 0.3 * max(buoyancy_flux, 0.0) * layer_depth / ustar**3
+    convective = 0.0 if buoyancy_flux <= 0 else 0.3 * buoyancy_flux * layer_depth / ustar**3
     return float(shear), float(0.22 * drift / ustar), float(convective)
 
 

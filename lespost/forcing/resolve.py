@@ -59,7 +59,8 @@ class Sources:
             return None
         values = np.asarray(hint.value, float)
         if values.ndim and values.shape != self.time.shape:
-            raise DataError(f"{hint.evidence}: {values.size} values for {self.time.size} snapshots; name the forcing in the recipe.")
+            raise DataError(f"{hint.evidence}: {values.size} values for {self.time.size} snapshots; "
+                            "name the forcing in the recipe.")
         low, high = float(np.min(values)), float(np.max(values))
         self.note(words, f"{low:g} {units}" if low == high else f"{low:g} to {high:g} {units}", "metadata", hint.evidence)
         return np.broadcast_to(values, self.time.shape).copy()
@@ -88,17 +89,18 @@ def resolve_forcing(
     direction = _stress_direction(forcing, sources)
     temperature_flux = _temperature_flux(forcing, sources, density, heat)
     salt_flux = np.full(ustar.size, float(buoyancy.salinity_flux(forcing.evaporation_minus_precipitation, forcing.salinity)))
-    salt_part = 0.0 if forcing.evaporation_minus_precipitation == 0 else contraction * salt_flux
-    b0 = gravity * (expansion * temperature_flux - salt_part)
+    # No flux is no buoyancy, whatever the unknown properties of the water; an unknown flux stays unknown.
+    b0 = buoyancy.buoyancy_flux(temperature_flux, salt_flux, gravity, expansion if np.any(temperature_flux != 0) else 0.0,
+                                contraction if np.any(salt_flux != 0) else 0.0) + 0.0
     drift = resolve_stokes(stokes, sources, forcing, direction, np.asarray(z_face, float), gravity, base)
     t = ("time",)
     data: dict[str, tuple[Any, Any, dict[str, str]]] = {
         "friction_velocity": (t, ustar, _about("m s-1", "friction velocity in the water")),
-        "stress_direction": (t, direction, _about("degree", "direction towards which the stress acts, counter-clockwise from +x")),
+        "stress_direction": (t, direction, _about("degree", "direction the stress acts towards, counter-clockwise from +x")),
         "surface_temperature_flux": (t, temperature_flux, _about("K m s-1", "upward temperature flux at the surface")),
         "surface_salinity_flux": (t, salt_flux, _about("g kg-1 m s-1", "upward salinity flux at the surface")),
         "surface_buoyancy_flux": (t, b0, _about("m2 s-3", "upward buoyancy flux at the surface; positive destabilises")),
-        "shortwave": ((), np.nan if forcing.shortwave is None else forcing.shortwave, _about("W m-2", "sunlight entering the water")),
+        "shortwave": ((), np.nan if forcing.shortwave is None else forcing.shortwave, _about("W m-2", "sunlight into the water")),
         "gravity": ((), gravity, _about("m s-2", "acceleration of gravity")),
         "reference_density": ((), density, _about("kg m-3", "reference density")),
         "specific_heat": ((), heat, _about("J kg-1 K-1", "specific heat")),
@@ -137,7 +139,8 @@ def _properties(forcing: ForcingSettings, sources: Sources) -> tuple[float, floa
     if teos is None:
         teos = buoyancy.seawater_properties(forcing.salinity, 15.0)
         if forcing.evaporation_minus_precipitation:
-            sources.note("haline contraction", f"{teos[1]:.4g} kg g-1", "default", "TEOS-10 at 15 degC; give [forcing].temperature")
+            sources.note("haline contraction", f"{teos[1]:.4g} kg g-1", "default",
+                         "TEOS-10 at 15 degC; give [forcing].temperature")
     return expansion, teos[1]
 
 
@@ -173,9 +176,9 @@ def _friction_velocity(forcing: ForcingSettings, sources: Sources, density: floa
     if found is None:
         sources.note("friction velocity", "unknown", "default", "write [forcing].friction_velocity, stress or wind_speed")
         return np.full(sources.time.size, np.nan)
-    if np.nanmax(found) > 0.06:
-        raise RecipeError(f"friction velocity {np.nanmax(found):.3g} m s-1 would take a hurricane; did you mean a stress in N m-2? "
-                          "Then write [forcing].stress, which wins over what the files state.")
+    if np.any(found > 0.06):
+        raise RecipeError(f"friction velocity {np.nanmax(found):.3g} m s-1 would take a hurricane; did you mean a stress in "
+                          "N m-2? Then write [forcing].stress, which wins over what the files state.")
     return found
 
 
@@ -201,9 +204,9 @@ def wrap_degrees(angle: Any) -> Any:
 
 def _temperature_flux(forcing: ForcingSettings, sources: Sources, density: float, specific_heat: float) -> np.ndarray:
     if forcing.surface_temperature_flux is None and forcing.surface_heat_flux is not None:
-        sources.note("surface temperature flux", f"{-forcing.surface_heat_flux / (density * specific_heat):.4g} K m s-1", "recipe",
-                     "[forcing].surface_heat_flux")
-        return np.full(sources.time.size, -forcing.surface_heat_flux / (density * specific_heat))
+        given = float(buoyancy.temperature_flux(forcing.surface_heat_flux, density, specific_heat))
+        sources.note("surface temperature flux", f"{given:.4g} K m s-1", "recipe", "[forcing].surface_heat_flux")
+        return np.full(sources.time.size, given)
     if forcing.surface_temperature_flux is None and "surface_heat_flux" in sources.hints:
         flux = sources.series("surface_heat_flux", None, "W m-2")
         assert flux is not None

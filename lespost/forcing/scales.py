@@ -29,7 +29,8 @@ CONVENTIONS = {
     "wstar": "(b0 h)^(1/3) [m s-1]; undefined unless b0 > 0",
     "us0": "modulus of the surface Stokes drift [m s-1]",
     "la_t": "(ustar / us0)^(1/2) (McWilliams, Sullivan & Moeng 1997)",
-    "la_sl": "(ustar / (mean drift over the upper fifth of h - reference))^(1/2) (Harcourt & D'Asaro 2008); reference drift: {reference}",
+    "la_sl": "(ustar / (mean drift over the upper fifth of h - reference))^(1/2) (Harcourt & D'Asaro 2008); "
+             "reference drift: {reference}",
     "la_proj": "la_t projected on the cell axis (Van Roekel et al. 2012)",
     "alpha_deg": "cell axis from the stress towards the waves [degree] (Van Roekel et al. 2012)",
     "hoenikker": "4 b0 delta / (us0 ustar^2), delta = transport / us0 (Li & Garrett 1995)",

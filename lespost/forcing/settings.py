@@ -82,8 +82,8 @@ class StokesSettings(Settings):
 
     kind: Literal["auto", "none", "monochromatic", "profile", "bulk_breivik_2014", "bulk_breivik_2016", "spectrum",
                   "theory_wave"] = Field(
-        "auto", description="How the profile is made. auto: what the keys below or the files state; none: no waves; theory_wave: from "
-        "the wind alone (Li et al. 2017).")
+        "auto", description="How the profile is made. auto: what the keys below or the files state; none: no waves; theory_wave: "
+        "from the wind alone (Li et al. 2017).")
     surface_speed: Annotated[float, InUnit("m s-1"), Field(ge=0, le=3)] | None = Field(
         None, description="Stokes drift at the surface.")
     amplitude: Annotated[float, InUnit("m"), Field(gt=0, le=30)] | None = Field(

@@ -49,7 +49,7 @@ class Spectrum:
         count = self.frequency.size
         where = self.source
         if self.frequency.ndim != 1 or count < 2:
-            raise DataError(f"{where}: a spectrum needs at least two frequencies, found {count}; check the file's columns or axes.")
+            raise DataError(f"{where}: a spectrum needs at least two frequencies, found {count}; check the columns or axes.")
         if not (np.all(np.isfinite(self.frequency)) and self.frequency[0] > 0 and np.all(np.diff(self.frequency) > 0)):
             raise DataError(f"{where}: frequencies must be positive and ascending, in Hz; check which column or axis holds them.")
         shape = (count,) if self.directions is None else (count, self.directions.size)
@@ -58,14 +58,14 @@ class Spectrum:
         if not np.all(np.isfinite(self.density)):
             raise DataError(f"{where}: the density has missing or infinite values; leave those frequencies out.")
         if np.any(self.density < 0):
-            raise DataError(f"{where}: the variance density is negative ({self.density.min():g}); is it a logarithm, or a cross-spectrum? "
-                            "Give the energy density in m2/Hz.")
+            raise DataError(f"{where}: the variance density is negative ({self.density.min():g}); is it a logarithm, or a "
+                            "cross-spectrum? Give the energy density in m2/Hz.")
         for name in ("r1", "mean_direction", "bandwidth"):
             value = getattr(self, name)
             if value is not None and value.ndim == 0:
                 object.__setattr__(self, name, np.full(count, float(value)))
             elif value is not None and value.shape != (count,):
-                raise DataError(f"{where}: {name} has {value.size} values for {count} frequencies; check the companion column or file.")
+                raise DataError(f"{where}: {name} has {value.size} values for {count} frequencies; check the companion column.")
         if self.r1 is not None and (np.nanmin(self.r1) < 0 or np.nanmax(self.r1) > 1 + 1e-6):
             raise DataError(f"{where}: r1 reaches from {np.nanmin(self.r1):g} to {np.nanmax(self.r1):g}; it must lie in 0 to 1 "
                             "(some archives store hundredths: divide by 100).")
@@ -83,7 +83,10 @@ class Spectrum:
         """Density times the mean cosine and sine of the direction (nf,) [m2 s]: all that the drift takes from direction."""
         if self.directions is not None:
             angle, weights = np.radians(self.directions), direction_weights(self.directions)
-            return self.density @ (np.cos(angle) * weights), self.density @ (np.sin(angle) * weights)
+            both = (self.density @ (np.cos(angle) * weights), self.density @ (np.sin(angle) * weights))
+            # Waves from all sides cancel to round-off, which is no direction.
+            negligible = 1e-12 * self.energy()
+            return np.where(abs(both[0]) > negligible, both[0], 0.0), np.where(abs(both[1]) > negligible, both[1], 0.0)
         strength = self.density if self.r1 is None else self.density * self.r1
         if self.mean_direction is None:
             return strength, np.zeros_like(strength)
@@ -94,11 +97,18 @@ class Spectrum:
         """The same waves turned by `angle` [degree], counter-clockwise."""
         if self.directions is not None:
             return replace(self, directions=self.directions + angle)
-        return replace(self, mean_direction=(0.0 if self.mean_direction is None else self.mean_direction) + np.full(self.frequency.size, angle))
+        before = np.zeros(self.frequency.size) if self.mean_direction is None else self.mean_direction
+        return replace(self, mean_direction=before + angle)
 
     def towards(self, angle: float) -> Spectrum:
-        """The same waves turned as a whole so that their surface drift (deep water, tail included) points towards `angle` [degree]."""
+        """The same waves turned as a whole so that their surface drift (deep water, with tail) points towards `angle` [degree].
+
+        Raises DataError where the waves have no drift, because they come from all sides alike.
+        """
         u, v = stokes_drift(0.0, self)
+        if not np.hypot(u, v) > 0:
+            raise DataError(f"{self.source}: the waves come from all sides alike and have no direction to turn towards "
+                            f"{angle:g}.")
         return self.rotated(angle - float(np.degrees(np.arctan2(v, u))))
 
     def integrate(self, values: np.ndarray) -> np.ndarray:
@@ -144,7 +154,8 @@ def stokes_drift(z: Any, spectrum: Spectrum, water_depth: float | None = None, t
     """
     heights = np.asarray(z, dtype=np.float64)
     if np.any(heights > 0) or (water_depth is not None and np.any(heights < -water_depth * (1 + 1e-12))):
-        raise DataError(f"heights from {heights.min():g} to {heights.max():g} m: the drift exists between the bottom and the surface (z = 0).")
+        raise DataError(f"heights from {heights.min():g} to {heights.max():g} m: Stokes drift is defined from the bottom "
+                        "to z = 0.")
     kernel = _kernel(heights, spectrum.frequency, water_depth, gravity) * spectrum.frequency_weights()
     parts = []
     beyond = tail_drift(heights, float(spectrum.frequency[-1]), water_depth, gravity) if tail else 0.0
@@ -216,6 +227,7 @@ def summary(spectrum: Spectrum, water_depth: float | None = None, tail: bool = T
     along = extra * (u * moments[0][-1] + v * moments[1][-1]) / us0**2 if us0 > 0 else np.nan
     return SpectrumSummary(
         us0=us0, transport=transport, decay_scale=transport / us0 if us0 > 0 else np.nan,
-        hs=4 * float(np.sqrt(spectrum.integrate(energy))), fp=float(spectrum.frequency[np.argmax(energy)]), tail_fraction=float(along),
+        hs=4 * float(np.sqrt(spectrum.integrate(energy))), fp=float(spectrum.frequency[np.argmax(energy)]),
+        tail_fraction=float(along),
         direction=float(np.degrees(np.arctan2(v, u))) if spectrum.has_direction and us0 > 0 else np.nan,
     )

@@ -121,7 +121,8 @@ def frequency_factor(units: str, where: str) -> float:
 
 def density_unit(text: str) -> str:
     """A density's unit in a spelling that UDUNITS reads: "m^2/Hz/deg" becomes "m2 s degree-1"."""
-    out = text.strip().replace("**", "").replace("^", "").replace("/Hz", " s").replace("/hz", " s").replace("Hz-1", "s").replace("*", " ")
+    out = text.strip().replace("**", "").replace("^", "").replace("*", " ")
+    out = out.replace("/Hz", " s").replace("/hz", " s").replace("Hz-1", "s")
     for word in ("degrees", "degree", "deg"):
         out = out.replace(f"/{word}", " degree-1").replace(f"{word}-1", "degree-1")
     return out.replace("/radian", " rad-1").replace("/rad", " rad-1").replace("m2s", "m2 s")
@@ -141,7 +142,8 @@ def _read_netcdf(file: Path) -> RawSpectra:
     try:
         data = netCDF4.Dataset(str(file))
     except OSError as error:
-        raise DataError(f"{file}: not readable as netCDF ({error.strerror or error}); is the copy complete? Fetch it again.") from None
+        raise DataError(f"{file}: not readable as netCDF ({error.strerror or error}); is the copy complete? Fetch it "
+                        "again.") from None
     with data:
         try:
             return _from_dataset(data, file)
@@ -161,12 +163,14 @@ def _values(variable: Any) -> np.ndarray:
 def _from_dataset(data: Any, file: Path) -> RawSpectra:
     variable = _named(data, *reversed(DENSITY_NAMES))
     if variable is None:
-        raise DataError(f"{file}: no variable has the standard name {' or '.join(DENSITY_NAMES)}; add it with ncatted, or give the "
+        raise DataError(f"{file}: no variable has the standard name {' or '.join(DENSITY_NAMES)}; add it with ncatted, or "
+                        "give the "
                         f"spectrum as a two-column text file. The file has: {', '.join(data.variables) or 'nothing'}.")
     name = f'{file.name}, variable "{variable.name}"'
     frequency_axis = _axis(data, variable, FREQUENCY_NAMES, ("frequency", "freq", "f", "wave_frequency"))
     if frequency_axis is None:
-        raise DataError(f"{name}: no frequency axis among its dimensions {', '.join(variable.dimensions)}; give the coordinate the "
+        raise DataError(f"{name}: no frequency axis among its dimensions {', '.join(variable.dimensions)}; give the "
+                        "coordinate the "
                         f"standard name {FREQUENCY_NAMES[0]}.")
     units_text = str(getattr(frequency_axis, "units", "Hz"))
     factor = frequency_factor(units_text, f'{file.name}, variable "{frequency_axis.name}"')
@@ -178,7 +182,8 @@ def _from_dataset(data: Any, file: Path) -> RawSpectra:
     axes = [frequency_axis.dimensions[0], *([direction_axis.dimensions[0]] if both else [])]
     density = _arranged(variable, axes, file)
     unit = density_unit(str(getattr(variable, "units", "")))
-    radians = 2 * np.pi if "rad" in units_text.lower() and "rad" in str(getattr(variable, "units", "")).lower() and not both else 1.0
+    per_radian_per_second = "rad" in units_text.lower() and "rad" in unit and not both
+    radians = 2 * np.pi if per_radian_per_second else 1.0
     bounds = _bounds(data, frequency_axis, factor)
     if not both:
         density = density * conversion(unit.replace("rad-1", ""), "m2 s", name)[0] * radians
@@ -194,7 +199,8 @@ def _from_dataset(data: Any, file: Path) -> RawSpectra:
 
 def _axis(data: Any, variable: Any, standard_names: tuple[str, ...], names: tuple[str, ...]) -> Any:
     """The coordinate of `variable` that carries one of the standard names, or failing that one of the plain names."""
-    candidates = [other for other in data.variables.values() if len(other.dimensions) == 1 and other.dimensions[0] in variable.dimensions]
+    candidates = [other for other in data.variables.values()
+                  if len(other.dimensions) == 1 and other.dimensions[0] in variable.dimensions]
     for other in candidates:
         if getattr(other, "standard_name", "") in standard_names:
             return other
@@ -218,7 +224,8 @@ def _comes_from(axis: Any, file: Path) -> bool:
         return True
     if "to_direction" in text or "towards" in text or " to " in f" {text} ":
         return False
-    raise DataError(f'{file}: variable "{axis.name}" does not say whether waves come from or go to these directions; give it the standard '
+    raise DataError(f'{file}: variable "{axis.name}" does not say whether waves come from or go to these directions; give '
+                    'it the standard '
                     f"name {FROM_NAMES[0]} or {TO_NAMES[0]}.")
 
 
@@ -244,17 +251,20 @@ def _per_radian(data: Any, unit: str, density: np.ndarray, frequency: np.ndarray
     if not measured > 0:
         if stated:
             return float(factor)
-        raise DataError(f'{name}: unit "{unit}" does not say whether the density is per radian or per degree, and no wave height tells; '
+        raise DataError(f'{name}: unit "{unit}" does not say whether the density is per radian or per degree, and no wave '
+                        'height tells; '
                         'write "m2 s rad-1" or "m2 s degree-1" as its unit.')
     order = np.argsort(frequency)
     mean = np.nanmean(density, axis=0)[order] @ direction_weights(compass) * factor
-    variance = float(np.nansum(mean * bounds[order])) if bounds is not None else float(np.trapezoid(np.nan_to_num(mean), frequency[order]))
+    mean = np.nan_to_num(mean)
+    variance = float((mean * bounds[order]).sum() if bounds is not None else np.trapezoid(mean, frequency[order]))
     ratio = variance / (measured**2 / 16)
     other = np.degrees(1.0)
     for correction in (1.0,) if stated else (1.0, other):
         if 1 / 3 < ratio * correction < 3:
             return float(factor * correction)
-    raise DataError(f"{name}: integrated over frequency and direction it makes a wave height of {4 * np.sqrt(variance):.3g} m where the file "
+    raise DataError(f"{name}: integrated over frequency and direction it makes a wave height of "
+                    f"{4 * np.sqrt(variance):.3g} m where the file "
                     f'states {measured:.3g} m; is the density per degree or per radian? Its unit is "{unit}".')
 
 
@@ -266,10 +276,12 @@ def _with_moments(data: Any, file: Path, raw: RawSpectra, frequency_dimension: s
         return raw
     factor = conversion(str(getattr(direction, "units", "degree")), "degree", f'{file.name}, variable "{direction.name}"')[0]
     angles = _arranged(direction, [frequency_dimension], file) * factor
-    spread = next((v for v in data.variables.values() if v.name.lower() in ("r1", "wave_r1") and frequency_dimension in v.dimensions), None)
+    spread = next((v for v in data.variables.values()
+                   if v.name.lower() in ("r1", "wave_r1") and frequency_dimension in v.dimensions), None)
     r1 = None if spread is None else _arranged(spread, [frequency_dimension], file)
     shape = raw.density.shape
     if angles.shape != shape or (r1 is not None and r1.shape != shape):
-        raise DataError(f'{file}: "{direction.name}" and the density differ in shape ({angles.shape} and {shape}); cut them to the same times.')
+        raise DataError(f'{file}: "{direction.name}" and the density differ in shape ({angles.shape} and {shape}); cut '
+                        'them to the same times.')
     return RawSpectra(raw.frequency, raw.density, mean_direction=angles, r1=r1, coming_from=_comes_from(direction, file),
                       bandwidth=raw.bandwidth)

@@ -12,7 +12,7 @@ import numpy as np
 
 from lespost.errors import DataError
 from lespost.forcing.spectrum_files import RawSpectra, density_unit, frequency_factor
-from lespost.units import convertible, conversion
+from lespost.units import conversion, convertible
 
 #: value (frequency), as in the realtime layout.
 PAIR = re.compile(r"([-+.\deE]+)\s*\(\s*([.\d]+)\s*\)")
@@ -52,7 +52,8 @@ def _buoy(file: Path, lines: list[str]) -> RawSpectra:
         if file.suffix == ".data_spec" and companion.is_file():
             other_frequency, other_stamps, values = _buoy_values(companion, _lines(companion))
             if other_frequency.size != frequency.size or not np.allclose(other_frequency, frequency, atol=5e-4):
-                raise DataError(f"{companion}: its frequencies are not those of {file.name}; fetch both files for the same buoy and day.")
+                raise DataError(f"{companion}: its frequencies are not those of {file.name}; fetch both files for the "
+                                "same buoy and day.")
             rows = {stamp: number for number, stamp in enumerate(other_stamps)}
             whole = np.full(energy.shape, np.nan)
             for number, stamp in enumerate(stamps):
@@ -81,19 +82,22 @@ def _buoy_values(file: Path, lines: list[str]) -> tuple[np.ndarray, list[tuple[s
             found = [_number(frequency, file, number) for _, frequency in pairs]
             axis = axis or found
             if found != axis:
-                raise DataError(f"{file}: spectrum {number} has {len(found)} frequencies unlike the first's {len(axis)}; the line is cut off "
+                raise DataError(f"{file}: spectrum {number} has {len(found)} frequencies unlike the first's {len(axis)}; "
+                                "the line is cut off "
                                 "or the buoy was changed: split the file there.")
             stamps.append(tuple(row.split()[:5]))
             values.append([_number(value, file, number) for value, _ in pairs])
     else:
         axis = [float(word) for word in header.lstrip("#").split() if re.fullmatch(NUMBER, word)]
         if len(axis) < 2:
-            raise DataError(f"{file}: the header line names no frequencies and the values carry none in brackets; is it a spectrum file?")
+            raise DataError(f"{file}: the header line names no frequencies and the values carry none in brackets; is it a "
+                            "spectrum file?")
         lead = len(header.lstrip("#").split()) - len(axis)
         for number, row in enumerate(rows, start=1):
             words = row.split()
             if len(words) != lead + len(axis):
-                raise DataError(f"{file}: spectrum {number} has {len(words) - lead} values for {len(axis)} frequencies; the line is cut off.")
+                raise DataError(f"{file}: spectrum {number} has {len(words) - lead} values for {len(axis)} frequencies; "
+                                "the line is cut off.")
             stamps.append(tuple(words[:5]))
             values.append([_number(word, file, number) for word in words[lead:]])
     whole = np.array(values)
@@ -112,7 +116,8 @@ def _table(file: Path, lines: list[str]) -> RawSpectra:
     body = [line.lstrip("#").strip() for line in lines]
     first = next((number for number, line in enumerate(body) if re.match(rf"{NUMBER}(?:[,;\s]|$)", line)), None)
     if first is None:
-        raise DataError(f"{file}: no line of numbers; a spectrum table has a frequency and a density on each line, such as 0.1,1.25.")
+        raise DataError(f"{file}: no line of numbers; a spectrum table has a frequency and a density on each line, such "
+                        "as 0.1,1.25.")
     header = body[first - 1] if first else ""
     columns = _split(header) if header else []
     rows = []
@@ -123,19 +128,23 @@ def _table(file: Path, lines: list[str]) -> RawSpectra:
         except ValueError:
             raise DataError(f'{file}, line {number}: "{line[:40]}" is not a row of numbers; correct or delete it.') from None
         if len(rows[-1]) != len(rows[0]):
-            raise DataError(f"{file}, line {number}: {len(rows[-1])} numbers where the first row has {len(rows[0])}; complete the row.")
+            raise DataError(f"{file}, line {number}: {len(rows[-1])} numbers where the first row has {len(rows[0])}; "
+                            "complete the row.")
     table = np.array(rows)
     if table.shape[1] < 2:
         raise DataError(f"{file}: one column only; a spectrum table needs frequency and density.")
     if columns and len(columns) != table.shape[1]:
-        raise DataError(f'{file}: the header "{header}" names {len(columns)} columns where the rows have {table.shape[1]}; separate them by commas.')
+        raise DataError(f'{file}: the header "{header}" names {len(columns)} columns where the rows have '
+                        f'{table.shape[1]}; separate them by commas.')
     if table.shape[1] > 2 and not columns:
-        raise DataError(f"{file}: {table.shape[1]} columns without a header; name them, such as f (Hz),E (m2/Hz),r1,direction_from (degree).")
+        raise DataError(f"{file}: {table.shape[1]} columns without a header; name them, such as f (Hz),E "
+                        "(m2/Hz),r1,direction_from (degree).")
     return _columns(file, table, columns)
 
 
 def _split(header: str) -> list[str]:
-    return [word.strip() for word in (re.split(r"[,;]", header) if re.search(r"[,;]", header) else re.split(r"\s{2,}|\t", header))]
+    separator = r"[,;]" if re.search(r"[,;]", header) else r"\s{2,}|\t"
+    return [word.strip() for word in re.split(separator, header)]
 
 
 def _unit(column: str) -> str:
@@ -157,7 +166,8 @@ def _columns(file: Path, table: np.ndarray, columns: list[str]) -> RawSpectra:
         elif re.match(r"(e|s|psd|density|spec\w*|energy\w*|variance\w*|efth)", name):
             place["density"] = number
     if place["density"] == place["frequency"]:
-        raise DataError(f'{file}: the header "{", ".join(columns)}" does not tell frequency from density; write f (Hz),E (m2/Hz).')
+        raise DataError(f'{file}: the header "{", ".join(columns)}" does not tell frequency from density; write f (Hz),E '
+                        '(m2/Hz).')
     frequency, density = table[:, place["frequency"]].copy(), table[:, place["density"]].copy()
     factor = 1.0
     if columns:
@@ -165,8 +175,9 @@ def _columns(file: Path, table: np.ndarray, columns: list[str]) -> RawSpectra:
         factor = frequency_factor(unit or "Hz", f"{file}, first column")
         unit = density_unit(units[place["density"]]) or "m2 s"
         if not convertible(unit.replace("rad-1", ""), "m2 s"):
-            raise DataError(f'{file}: the density is in "{units[place["density"]]}", which is no m2/Hz; convert it to variance per hertz.')
-        density = density * conversion(unit.replace("rad-1", ""), "m2 s")[0] * (2 * np.pi if "rad" in units[place["density"]].lower() else 1.0)
+            raise DataError(f'{file}: the density is in "{units[place["density"]]}", which is no m2/Hz; convert it to '
+                            'variance per hertz.')
+        density = density * conversion(unit.replace("rad-1", ""), "m2 s")[0] * (2 * np.pi if "rad" in unit else 1.0)
     if np.any(np.diff(frequency) == 0):
         raise DataError(f"{file}: a frequency stands twice; a table by frequency and direction belongs in a netCDF file.")
     coming_from, direction = True, None
@@ -175,7 +186,8 @@ def _columns(file: Path, table: np.ndarray, columns: list[str]) -> RawSpectra:
         going = bool(re.search(r"to|toward", name.replace("direction", "")))
         coming = "from" in name or "alpha" in name
         if going == coming:
-            raise DataError(f'{file}: column "{columns[place["direction"]]}" does not say whether waves come from or go to it; call it '
+            raise DataError(f'{file}: column "{columns[place["direction"]]}" does not say whether waves come from or go '
+                            'to it; call it '
                             "direction_from or direction_to (compass degrees).")
         coming_from = coming
         scale = conversion(units[place["direction"]] or "degree", "degree", f"{file}, direction column")[0]

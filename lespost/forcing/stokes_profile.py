@@ -42,8 +42,9 @@ def resolve_stokes(settings: StokesSettings, sources: Sources, forcing: ForcingS
     if settings.kind == "profile" or (settings.kind == "auto" and settings.profile_z):
         return _by_hand(settings, sources, z_face)
     if settings.kind == "spectrum" or (settings.kind == "auto" and settings.spectrum_file):
-        return _from_spectrum(settings, sources, z_face, gravity, base)
-    if settings.kind == "auto" and settings.surface_speed is None and {"stokes_profile_u", "stokes_profile_v"} & set(sources.hints):
+        return _from_spectrum(settings, sources, forcing, stress_direction, z_face, gravity, base)
+    stored = {"stokes_profile_u", "stokes_profile_v"} & set(sources.hints)
+    if settings.kind == "auto" and settings.surface_speed is None and stored:
         return _from_profile_hints(sources, z_face)
     direction = _direction(settings, sources, stress_direction)
     if settings.kind in ("bulk_breivik_2014", "bulk_breivik_2016"):
@@ -72,13 +73,16 @@ def _monochromatic(settings: StokesSettings, sources: Sources, direction: np.nda
         k = float(np.mean(sources.hints["stokes_wavenumber"].value))
         sources.note("Stokes wavenumber", f"{k:g} m-1", "metadata", sources.hints["stokes_wavenumber"].evidence)
     height = settings.wave_height
-    amplitude = settings.amplitude or (height / (2 * np.sqrt(2)) if height is not None and settings.surface_speed is None else None)
+    amplitude = settings.amplitude
+    if amplitude is None and height is not None and settings.surface_speed is None:
+        amplitude = height / (2 * np.sqrt(2))
     surface: np.ndarray | None
     if amplitude is not None and settings.surface_speed is None:
         if k is None:
             raise RecipeError("[stokes]: an amplitude or wave height needs wavelength or wavenumber.")
         surface = np.full(sources.time.size, float(forms.monochromatic(0.0, amplitude, k, settings.water_depth, gravity)))
-        sources.note("Stokes drift", f"{surface[0]:.4g} m s-1 at the surface", "recipe", f"one wave, amplitude {amplitude:g} m, k {k:g} m-1")
+        sources.note("Stokes drift", f"{surface[0]:.4g} m s-1 at the surface", "recipe",
+                     f"one wave, amplitude {amplitude:g} m, k {k:g} m-1")
         height = height if height is not None else 2 * np.sqrt(2) * amplitude
     else:
         surface = sources.series("stokes_surface_speed", settings.surface_speed, "m s-1", "[stokes].surface_speed")
@@ -99,7 +103,8 @@ def _monochromatic(settings: StokesSettings, sources: Sources, direction: np.nda
         raise RecipeError("[stokes]: the surface drift is known but not how it decays; write wavenumber or wavelength.")
     wavenumber = k
     if settings.water_depth is None:
-        sources.note("Stokes profile", f"exp(2 k z), k = {k:g} m-1", "recipe" if settings.decay_wavenumber else "metadata", "one deep-water wave")
+        sources.note("Stokes profile", f"exp(2 k z), k = {k:g} m-1", "recipe" if settings.decay_wavenumber else "metadata",
+                     "one deep-water wave")
         shape = forms.exponential_cell_means(z_face, 1.0, k)
         return _from_shapes(sources, surface, direction, shape, np.exp(2 * k * z_face), 1 / (2 * k), height)
     depth_m = settings.water_depth
@@ -132,19 +137,30 @@ def _by_hand(settings: StokesSettings, sources: Sources, z_face: np.ndarray) -> 
     return _vectors(sources, lambda h: np.interp(h, z, u), lambda h: np.interp(h, z, v), z_face, settings.wave_height)
 
 
-def _from_spectrum(settings: StokesSettings, sources: Sources, z_face: np.ndarray, gravity: float, base: Path | None) -> StokesOnGrid:
+def _from_spectrum(settings: StokesSettings, sources: Sources, forcing: ForcingSettings, stress_direction: np.ndarray,
+                   z_face: np.ndarray, gravity: float, base: Path | None) -> StokesOnGrid:
+    """The drift of a spectrum file; a spectrum without directions follows [stokes].direction, else the stress."""
     from lespost.forcing.spectrum import stokes_drift, summary
     from lespost.forcing.spectrum_files import read_spectrum
 
-    spectrum = read_spectrum((base or Path()) / settings.spectrum_file)
+    spectrum = read_spectrum((base or Path()) / settings.spectrum_file, x_axis_compass_bearing=forcing.x_axis_compass_bearing)
     if settings.direction is not None:
         spectrum = spectrum.towards(settings.direction)
-    numbers = summary(spectrum, settings.water_depth, settings.spectral_tail, gravity)
+    depth, tail = settings.water_depth, settings.spectral_tail
+    numbers = summary(spectrum, depth, tail, gravity)
     sources.note("Stokes drift", f"{numbers.us0:.4g} m s-1 at the surface", "recipe",
-                 f"spectrum {settings.spectrum_file}, tail {'added' if settings.spectral_tail else 'left out'}")
+                 f"spectrum {settings.spectrum_file} up to {spectrum.frequency[-1]:g} Hz, tail {'added' if tail else 'left out'}")
+    if not spectrum.has_direction and numbers.us0 > 0:
+        sources.note("Stokes direction", "that of the stress", "default", "the spectrum has none; write [stokes].direction")
+        return _scaled(sources, np.full(sources.time.size, numbers.us0), stress_direction,
+                       lambda z: stokes_drift(z, spectrum, depth, tail, gravity)[0] / numbers.us0, numbers.decay_scale, z_face,
+                       numbers.hs)
+    if spectrum.has_direction and settings.direction is None and forcing.x_axis_compass_bearing is None:
+        sources.note("Stokes direction", f"{numbers.direction:.4g} degree", "default",
+                     "compass directions of the spectrum with +x pointing east; write [forcing].x_axis_compass_bearing")
 
     def component(number: int) -> Callable[[np.ndarray], np.ndarray]:
-        return lambda z: stokes_drift(z, spectrum, settings.water_depth, settings.spectral_tail, gravity)[number]
+        return lambda z: stokes_drift(z, spectrum, depth, tail, gravity)[number]
 
     return _vectors(sources, component(0), component(1), z_face, numbers.hs)
 
@@ -174,7 +190,8 @@ def _extended(z: np.ndarray, values: np.ndarray, z_face: np.ndarray) -> np.ndarr
 def _vectors(sources: Sources, u: Callable[[np.ndarray], np.ndarray], v: Callable[[np.ndarray], np.ndarray], z_face: np.ndarray,
              wave_height: float | None) -> StokesOnGrid:
     faces = np.minimum(z_face, 0.0)
-    return _finish(sources, forms.cell_means(u, faces), forms.cell_means(v, faces), u(faces), v(faces), np.diff(z_face), wave_height)
+    cells = forms.cell_means(u, faces), forms.cell_means(v, faces)
+    return _finish(sources, *cells, u(faces), v(faces), np.diff(z_face), wave_height)
 
 
 def _finish(sources: Sources, u: np.ndarray, v: np.ndarray, u_face: np.ndarray, v_face: np.ndarray, thickness: np.ndarray,

@@ -21,8 +21,9 @@ def peak_frequency_of_wind(wind_speed_at_19_5: float, gravity: float = 9.81) -> 
     return 0.877 * gravity / (2 * np.pi * wind_speed_at_19_5)
 
 
-def jonswap(frequency: Any, peak_frequency: float, peakedness: float = 3.3, alpha: float = 0.0081, gravity: float = 9.81) -> np.ndarray:
-    """Pierson-Moskowitz density times γ^exp[-(f-f_p)²/(2σ²f_p²)], σ = 0.07 up to the peak and 0.09 beyond (Hasselmann et al. 1973)."""
+def jonswap(frequency: Any, peak_frequency: float, peakedness: float = 3.3, alpha: float = 0.0081, gravity: float = 9.81
+            ) -> np.ndarray:
+    """Pierson-Moskowitz density times γ^exp[-(f-f_p)²/(2σ²f_p²)], σ = 0.07 to the peak, 0.09 beyond (Hasselmann et al. 1973)."""
     f = np.asarray(frequency, dtype=np.float64)
     width = np.where(f <= peak_frequency, 0.07, 0.09)
     bump = np.exp(-((f - peak_frequency) ** 2) / (2 * width**2 * peak_frequency**2))

@@ -1,1 +1,1 @@
-"""See DEVELOPERS.md."""
+"""Virtual instruments: one forward operator (sampling), and a small module of geometry for each kind of instrument."""

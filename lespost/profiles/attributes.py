@@ -188,6 +188,7 @@ def describe(data: Mapping[str, np.ndarray], fields: xr.Dataset, layout: Layout,
         "velocity_kind": str(fields.attrs.get("velocity_kind", "eulerian")),
         "higher_moments": int(settings.higher_moments),
         "points_per_level": layout.ny * layout.nx,
+        "divergence_is_exact": int(layout.fully_staggered),
         "dx": layout.dx, "dy": layout.dy, "Lx": layout.dx * layout.nx, "Ly": layout.dy * layout.ny,
     }  # fmt: skip
     if layout.prandtl_number is not None:

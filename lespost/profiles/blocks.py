@@ -192,8 +192,8 @@ def _slab_edges(layout: Layout, fields: xr.Dataset, memory: int) -> list[int]:
     if fits == 0:
         smallest = block_memory(layout, fields, 1, min(1 + chunk, layout.nz))
         raise RequestError(
-            f"[compute].memory is too small: one block of {chunk} levels needs {smallest / 1e6:.0f} MB and may take "
-            f"{memory / 1e6:.0f} MB. Raise it, lower [compute].threads, or store the fields in chunks of fewer levels."
+            f"[compute].memory is too small: one block of {chunk} levels needs {smallest / 1e6:.3g} MB and may take "
+            f"{memory / 1e6:.3g} MB. Raise it, lower [compute].threads, or store the fields in chunks of fewer levels."
         )
     inner = [edge - 1 for edge in range(fits, layout.nz, fits) if edge > 1]
     return [0, *inner, layout.nz]

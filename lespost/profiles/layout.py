@@ -49,6 +49,11 @@ class Layout:
         """Whether w sits on z faces (staggered in the vertical)."""
         return "w" in self.on_z_faces
 
+    @property
+    def fully_staggered(self) -> bool:
+        """Whether u, v, w all sit on the faces of the cells, so that the discrete divergence is the model's own."""
+        return self.w_on_faces and self.u_arrangement == ALONG_X and self.v_arrangement == ALONG_Y
+
     def levels(self, name: str) -> int:
         """Number of levels of a field."""
         return self.nz + 1 if name in self.on_z_faces else self.nz

@@ -14,7 +14,7 @@ from lespost.findings import Decision, Finding
 from lespost.records.flags import worst
 from lespost.records.gather import Gathered
 from lespost.records.raw import RawRecord
-from lespost.records.series import compass_to_simulation, magnetic_to_true
+from lespost.series import compass_to_simulation, magnetic_to_true
 from lespost.records.settings import RecordSettings
 
 

@@ -19,7 +19,7 @@ from lespost.errors import RecordError
 from lespost.records.despike import median_spikes, phase_space_spikes
 from lespost.records.flags import NUMBER_OF_WORD
 from lespost.records.noise import lag_zero_noise_variance, plateau_noise_variance
-from lespost.records.series import DIMENSIONS
+from lespost.series import DIMENSIONS
 from lespost.records.settings import ProcessingSettings
 
 PROCESSED = ("u", "v", "w", "error_velocity", "temperature", "salinity")

@@ -16,7 +16,7 @@ import xarray as xr
 
 from lespost import __version__
 from lespost.errors import RecordError
-from lespost.records.series import FLAG_MEANINGS, FLAG_VALUES, SERIES_VARIABLES
+from lespost.series import FLAG_MEANINGS, FLAG_VALUES, SERIES_VARIABLES
 
 _REQUIRED_ATTRIBUTES = ("instrument", "chain")
 

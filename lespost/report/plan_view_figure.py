@@ -11,7 +11,7 @@ from matplotlib.figure import Figure
 from lespost.report import style
 
 
-def plan_view_figure(views: xr.Dataset, directions: dict[str, dict[str, float]]) -> Figure:
+def plan_view_figure(views: xr.Dataset, directions: dict[str, dict[str, float | None]]) -> Figure:
     """One panel per window of w [m s-1] on its level (views: w (window, y, x); coords depth, time per window).
 
     directions: per window name, any of "wind", "waves" (towards, degrees counter-clockwise from +x) and "axis" (a
@@ -45,9 +45,9 @@ def plan_view_figure(views: xr.Dataset, directions: dict[str, dict[str, float]])
     return figure
 
 
-def _compass(axis: Axes, directions: dict[str, float]) -> None:
+def _compass(axis: Axes, directions: dict[str, float | None]) -> None:
     """Arrows in an inset at the lower left: wind (solid), waves (dashed), cell axis (double-headed, thin)."""
-    shown = {kind: angle for kind, angle in directions.items() if np.isfinite(angle)}
+    shown = {kind: angle for kind, angle in directions.items() if angle is not None and np.isfinite(angle)}
     if not shown:
         return
     inset = axis.inset_axes((0.02, 0.02, 0.38, 0.26))

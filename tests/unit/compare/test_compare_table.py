@@ -18,7 +18,7 @@ from lespost.compare.uncertainty import Side
 from lespost.compare.verdicts import judge
 from lespost.errors import DataError, RequestError
 from lespost.records.processing import process
-from lespost.records.series import make_series
+from lespost.series import make_series
 from lespost.records.settings import ProcessingSettings
 from tests.unit.compare.toy_series import autoregressive, toy
 

@@ -6,7 +6,7 @@ import numpy as np
 import xarray as xr
 from scipy.signal import lfilter
 
-from lespost.records.series import make_series
+from lespost.series import make_series
 
 
 def autoregressive(

@@ -92,7 +92,7 @@ def test_a_flow_at_rest_decides_nothing(kit, tmp_path: Path) -> None:
     flow = kit.make_flow(nx=12, ny=12, nz=12)
     still = {n: (("time", "a", "b", "c"), np.zeros((3, 12, 12, 12), "f4"), {}) for n in ("u", "v", "w")}
     still["time"] = (("time",), flow.time, {"units": "s"})
-    with pytest.raises(LayoutError, match=r"at rest.*axes = \["):
+    with pytest.raises(LayoutError, match=r"at rest.*cannot decide axes and surface and w_position.*axes = \["):
         kit.opened(kit.write_netcdf(tmp_path / "a.nc", still), dx=1, dy=1, dz=1)
 
 
