@@ -59,7 +59,7 @@ def shear_deepening(friction_velocity: float, buoyancy_frequency: float, corioli
                     critical_richardson: float = 1.0) -> np.ndarray:
     """Layer depth [m] at `time` [s] after a wind starts over linear stratification, stopping where Ri_b = `critical_richardson`.
 
-    h = u*/√(f N) [4 (1 - cos f t) / Ri_c]^(1/4), Ri_b = Δb h / |ΔU|² (Pollard, Rhines & Thompson 1973); 0.65 gives the
+    h = u*/√(f N) [4 Ri_c (1 - cos f t)]^(1/4), Ri_b = Δb h / |ΔU|² (Pollard, Rhines & Thompson 1973); 0.65 gives the
     bulk criterion of Price, Weller & Pinkel (1986) under the same assumptions. Deepest at half an inertial period.
     """
     f = abs(coriolis_parameter)
