@@ -83,18 +83,23 @@ class Pins:
 
 @dataclass(frozen=True)
 class Verdict:
-    """The chosen arrangement. margin: residual of the best different arrangement / its own (inf if there is none)."""
+    """The chosen arrangement. margin: residual of the best different arrangement / its own (inf if there is none).
+
+    evidence: of the arrangement; scheme_evidence: of the horizontal scheme and the places of u and v within it.
+    """
 
     candidate: Candidate
     margin: float
     evidence: str
+    scheme_evidence: str
     findings: tuple[Finding, ...]
 
-    def decision(self, subject: str, choice: str, pinned: bool, pin_text: str) -> Decision:
+    def decision(self, subject: str, choice: str, pinned: bool, pin_text: str, scheme: bool = False) -> Decision:
         """A Decision that quotes continuity, or the pin where there was one."""
+        evidence = self.scheme_evidence if scheme else self.evidence
         if pinned:
-            return Decision(subject, choice, "metadata", f"{pin_text}; {self.evidence}")
-        return Decision(subject, choice, "detected", self.evidence)
+            return Decision(subject, choice, "metadata", f"{pin_text}; {evidence}")
+        return Decision(subject, choice, "detected", evidence)
 
 
 def w_position(offset: WOffset, z_sign: int) -> str:
@@ -138,7 +143,8 @@ def choose(candidates: Sequence[Candidate], pins: Pins, where: str) -> Verdict:
             )
         first = allowed[0]
         note = Finding("divergence", "warning", "the sampled flow is at rest; the layout could not be checked by continuity.")
-        return Verdict(first, math.inf, "flow at rest: not checked by continuity", (note,))
+        text = "flow at rest: not checked by continuity"
+        return Verdict(first, math.inf, text, text, (note,))
     allowed = [c for c in allowed if math.isfinite(c.score.residual)]
     best = _best(allowed)
     rival = min(rated, key=lambda c: c.score.residual)
@@ -167,16 +173,42 @@ def choose(candidates: Sequence[Candidate], pins: Pins, where: str) -> Verdict:
     )
     if runner is not None:
         evidence += f", next best arrangement {runner.score.residual:.2g}, {margin:.3g} times more"
-    findings: tuple[Finding, ...] = ()
+    scheme_evidence, findings = _scheme(best, rated)
     if not at_roundoff(best.score):
         severity = "warning" if best.score.residual > 0.05 else "note"
-        findings = (Finding(
+        findings += (Finding(
             "divergence", severity,  # type: ignore[arg-type]
             f"the rms divergence is {best.score.residual:.2g} of its terms where rounding alone would leave "
             f"{best.score.roundoff:.1g}: the files hold interpolated, filtered or differently differenced velocities.",
             best.score.residual, ROUNDOFF_FACTOR * best.score.roundoff, "1",
         ),)  # fmt: skip
-    return Verdict(best, margin, evidence, findings)
+    return Verdict(best, margin, evidence, scheme_evidence, findings)
+
+
+def _scheme(best: Candidate, rated: list[Candidate]) -> tuple[str, tuple[Finding, ...]]:
+    """How clearly the horizontal scheme (with the places of u and v) wins over the others of the same arrangement."""
+
+    def soft(candidate: Candidate) -> tuple[str, str, str]:
+        return candidate.score.scheme, candidate.score.u_position, candidate.score.v_position
+
+    own = f"continuity: rms divergence {best.score.residual:.2g} of its terms"
+    others = [c for c in rated if c.arrangement == best.arrangement and soft(c) != soft(best)]
+    if not others:
+        return own, ()
+    second = min(others, key=lambda c: c.score.residual)
+    margin = _effective(second.score) / _effective(best.score)
+    name: str = second.score.scheme
+    if name == "staggered":
+        name += f", u {second.score.u_position}, v {second.score.v_position}"
+    text = f"{own}, next best scheme ({name}) {second.score.residual:.2g}, {margin:.3g} times more"
+    if margin >= MARGIN:
+        return text, ()
+    return text, (Finding(
+        "scheme-open", "note",
+        f"the horizontal scheme and the places of u and v are not clear ({best.score.scheme}: {best.score.residual:.2g}, {name}: "
+        f"{second.score.residual:.2g}); {best.score.scheme} is used. If it is known, write [fields].horizontal_scheme.",
+        margin, MARGIN, "1",
+    ),)  # fmt: skip
 
 
 def _best(allowed: list[Candidate]) -> Candidate:
