@@ -79,7 +79,7 @@ def one_forcing(given: dict[str, Any], no_waves: bool = False, la_sl_reference: 
     words["wave_height"] = height_words
     words["water"] = (f"g {number('gravity', ()):g} m s-2, density {number('reference_density', ()):g} kg m-3, specific heat "
                       f"{number('specific_heat', ()):g} J kg-1 K-1, thermal expansion {number('thermal_expansion', ()):.4g} K-1"
-                      + ("" if forcing.thermal_expansion is not None else
+                      + ("" if forcing.thermal_expansion is not None or forcing.temperature is None else
                          f" (TEOS-10 at {forcing.temperature:g} degC, {forcing.salinity:g} g kg-1)"))
     words["stress"] = "unknown" if np.isnan(ustar) else "given" if forcing.wind_speed is None else (
         f"{forcing.bulk_formula} with the neutral wind at 10 m, air density {forcing.air_density or AIR_DENSITY:g} kg m-3")

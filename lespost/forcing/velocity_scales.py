@@ -1,4 +1,4 @@
-"""Velocity and depth scales of wave-driven mixing and of deepening layers, as published; the forcing's own numbers are in `scales`."""
+"""Published scales of wave-driven mixing, entrainment and deepening; the numbers of a forcing itself are in `scales`."""
 
 from __future__ import annotations
 
@@ -22,13 +22,14 @@ def mixed_velocity(friction_velocity: Any, surface_stokes_drift: Any) -> np.ndar
 def stokes_depth_factor(layer_depth_over_stokes_depth: Any) -> np.ndarray:
     """Reduction of the Langmuir velocity where the drift is shallow or deep against the layer [1] (after Grant & Belcher 2009).
 
-    [1.12 (1 - (1 - e^-r)/r)]^(1/3) (1 - e^-15r), r = h / δ.
+    [1.12 (1 - (1 - e^-r)/r)]^(1/3) (1 - e^(-15/r)), r = h / δ.
     """
     r = np.asarray(layer_depth_over_stokes_depth, float)
-    return np.cbrt(1.12 * (1 + np.expm1(-r) / r)) * -np.expm1(-15 * r)
+    return np.cbrt(1.12 * (1 + np.expm1(-r) / r)) * -np.expm1(-15 / r)
 
 
-def entrainment_li_fox_kemper_2017(friction_velocity: Any, surface_layer_langmuir_number: Any, convective_velocity: Any) -> np.ndarray:
+def entrainment_li_fox_kemper_2017(friction_velocity: Any, surface_layer_langmuir_number: Any, convective_velocity: Any
+                                   ) -> np.ndarray:
     """-⟨w'b'⟩_e h [m3 s-3] = 0.17 u*³ + 0.083 u*³ La_SL^-2 + 0.15 w*³ (Li & Fox-Kemper 2017); w* = 0 without cooling."""
     cubed = np.asarray(friction_velocity, float) ** 3
     langmuir = 0.083 * np.asarray(surface_layer_langmuir_number, float) ** -2.0
@@ -50,9 +51,9 @@ def entrainment_shear_and_langmuir(friction_velocity: Any, surface_stokes_drift:
 
 
 def vertical_variance_convection(depth_fraction: Any) -> np.ndarray:
-    """⟨w²⟩/w*² = 1.8 ζ^(2/3) (1 - 0.8 ζ)², ζ = depth / h (Lenschow, Wyngaard & Pennell 1980); coefficient 1.34² = 1.7956."""
+    """⟨w²⟩/w*² = 1.8 ζ^(2/3) (1 - 0.8 ζ)², ζ = depth / h (Lenschow, Wyngaard & Pennell 1980)."""
     zeta = np.asarray(depth_fraction, float)
-    return (1.34 * np.cbrt(zeta) * (1 - 0.8 * zeta)) ** 2
+    return 1.8 * (np.cbrt(zeta) * (1 - 0.8 * zeta)) ** 2
 
 
 def shear_deepening(friction_velocity: float, buoyancy_frequency: float, coriolis_parameter: float, time: Any,
