@@ -14,15 +14,11 @@ from typing import Any
 
 import click
 
-from lespost import __version__
 from lespost.errors import LespostError
+from lespost.versions import stack_versions
 
 #: Commands in the order a newcomer meets them.
 COMMANDS = ("inspect", "run", "scales", "waves", "record", "page")
-
-#: Packages whose versions `--version` reports, because a bug report needs them.
-STACK = ("numpy", "scipy", "xarray", "dask", "zarr", "numba", "netCDF4", "gsw", "pyfftw", "matplotlib")
-
 
 class CommandGroup(click.Group):
     """A click group whose commands are imported on first use, so that `lespost --help` stays quick."""
@@ -37,20 +33,6 @@ class CommandGroup(click.Group):
             return None
         command: click.Command = importlib.import_module(f"lespost.cli.{name}").command
         return command
-
-
-def stack_versions() -> dict[str, str]:
-    """Versions of this package, Python and the libraries the numbers depend on."""
-    import platform
-    from importlib.metadata import PackageNotFoundError, version
-
-    versions = {"lespost": __version__, "python": platform.python_version()}
-    for package in STACK:
-        try:
-            versions[package] = version(package)
-        except PackageNotFoundError:
-            versions[package] = "not installed"
-    return versions
 
 
 def _print_versions(context: click.Context, _option: click.Parameter, asked: bool) -> None:

@@ -39,6 +39,7 @@ from lespost.profiles.production import add_production, close_surface
 from lespost.profiles.settings import IntervalSettings
 from lespost.profiles.windows import average_windows
 from lespost.regime.classify import classify
+from lespost.versions import stack_versions
 
 Say = Callable[[str], None]
 
@@ -177,11 +178,11 @@ def _window_forcing(forcing: xr.Dataset, plan: RunPlan) -> xr.Dataset:
     return joined.assign_coords(window=("window", [window.name for window in plan.windows])).drop_attrs(deep=False)
 
 
-def _account(plan: RunPlan, regime: pd.DataFrame, forcing: xr.Dataset, decisions: Sequence[Decision], findings: Sequence[Finding], summary: Summary,
-             timings: dict[str, float], cautions: Sequence[str]) -> dict[str, Any]:
+def _account(
+    plan: RunPlan, regime: pd.DataFrame, forcing: xr.Dataset, decisions: Sequence[Decision], findings: Sequence[Finding],
+    summary: Summary, timings: dict[str, float], cautions: Sequence[str],
+) -> dict[str, Any]:
     """The content of run.json."""
-    from lespost.cli import stack_versions
-
     recipe = plan.loaded.recipe
     directions = {}
     for window in plan.windows:

@@ -12,7 +12,6 @@ import xarray as xr
 
 from lespost.profiles.sgs import faces_to_cells
 
-
 #: long_name of each term; all in m2 s-3.
 TERMS = {
     "tke_shear": "shear production of turbulent kinetic energy",

@@ -97,8 +97,10 @@ def _written(location: Location) -> str:
     """A location as a reader of the recipe would write it: [fields].path, [[instrument]] 2 .name."""
     if not location:
         return "the recipe"
-    head, rest = str(location[0]), list(location[1:])
-    head = f"[[{head}]] number {rest.pop(0) + 1} " if rest and isinstance(rest[0], int) else f"[{head}]"
+    head, rest = f"[{location[0]}]", list(location[1:])
+    if rest and isinstance(rest[0], int):
+        head = f"[[{location[0]}]] number {rest[0] + 1} "
+        rest = rest[1:]
     for part in rest:
         head += f"[{part}]" if isinstance(part, int) else f".{part}"
     return head

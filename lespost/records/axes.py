@@ -14,8 +14,8 @@ from lespost.findings import Decision, Finding
 from lespost.records.flags import worst
 from lespost.records.gather import Gathered
 from lespost.records.raw import RawRecord
-from lespost.series import compass_to_simulation, magnetic_to_true
 from lespost.records.settings import RecordSettings
+from lespost.series import compass_to_simulation, magnetic_to_true
 
 
 def unit_mixture(record: RawRecord, gathered: dict[str, Gathered]) -> list[Finding]:

@@ -19,8 +19,8 @@ from lespost.errors import RecordError
 from lespost.records.despike import median_spikes, phase_space_spikes
 from lespost.records.flags import NUMBER_OF_WORD
 from lespost.records.noise import lag_zero_noise_variance, plateau_noise_variance
-from lespost.series import DIMENSIONS
 from lespost.records.settings import ProcessingSettings
+from lespost.series import DIMENSIONS
 
 PROCESSED = ("u", "v", "w", "error_velocity", "temperature", "salinity")
 

@@ -23,10 +23,10 @@ from lespost.records.csv_table import read_csv
 from lespost.records.gather import Gathered, gather_variable
 from lespost.records.raw import RawRecord
 from lespost.records.roles import Found, find_role, roles_of, velocity_roles
-from lespost.series import make_series
 from lespost.records.settings import RecordSettings
 from lespost.records.time import TimeAxis, check_order, iso, numeric_times, parse_iso, sampling, text_times
 from lespost.records.vertical import CellDepths, cell_depths, onto_fixed_depths
+from lespost.series import make_series
 
 _MAGIC = (b"CDF", b"\x89HDF")
 

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from typing import Any
+
 import matplotlib.pyplot as plt
 import numpy as np
 import pandas as pd
@@ -27,7 +29,7 @@ def regime_plane_figure(regime: pd.DataFrame) -> Figure:
     for _, row in first.iterrows():
         la, ratio = float(row["la_t"]), float(row["h_over_l_langmuir"])
         label = str(row["regime"])
-        look = {"marker": style.REGIME_MARKER.get(label, "o"), "color": style.REGIME_COLOUR.get(label, "k"), "markersize": 7,
+        look: dict[str, Any] = {"marker": style.REGIME_MARKER.get(label, "o"), "color": style.REGIME_COLOUR.get(label, "k"), "markersize": 7,
                 "markeredgecolor": "white", "markeredgewidth": 0.8, "linestyle": "none", "zorder": 5}
         if not np.isfinite(la) or not np.isfinite(ratio):
             outside.append(f"{row['window']} ({label})")
@@ -47,8 +49,8 @@ def regime_plane_figure(regime: pd.DataFrame) -> Figure:
 
 
 def _background(axis: plt.Axes) -> None:
-    la = np.logspace(*np.log10(_LA_LIMITS), 121)
-    ratio = np.logspace(*np.log10(_RATIO_LIMITS), 121)
+    la = np.geomspace(_LA_LIMITS[0], _LA_LIMITS[1], 121)
+    ratio = np.geomspace(_RATIO_LIMITS[0], _RATIO_LIMITS[1], 121)
     grid_la, grid_ratio = np.meshgrid(la, ratio)
     shares = dissipation_terms(grid_la, grid_ratio).share()
     tints = (("shear", "shear"), ("langmuir", "Langmuir"), ("convective", "convective"))

@@ -35,7 +35,7 @@ VERDICT_MARKER = {"agrees": "o", "differs": "X", "cannot tell": "D"}
 #: Line dashes for successive windows, and colours where the component does not set them.
 SEQUENCE = ("#000000", "#0072B2", "#D55E00", "#009E73", "#CC79A7", "#E69F00", "#56B4E9")
 
-_SETTINGS = {
+_SETTINGS: dict[Any, Any] = {
     "font.family": "sans-serif",
     "font.sans-serif": ["DejaVu Sans"],
     "font.size": 8,

@@ -72,7 +72,7 @@ def _frame(axis: plt.Axes) -> None:
             two = share * _CORNERS[first] + (1 - share) * _CORNERS[(first + 2) % 3]
             axis.plot([one[0], two[0]], [one[1], two[1]], color="0.92", linewidth=0.4, zorder=0)
     for corner, text, ha, va in ((0, "along", "right", "top"), (1, "cross", "left", "top"), (2, "vertical", "center", "bottom")):
-        axis.text(*_CORNERS[corner], text, ha=ha, va=va, fontsize=8)
+        axis.text(float(_CORNERS[corner, 0]), float(_CORNERS[corner, 1]), text, ha=ha, va=va, fontsize=8)
     for area, (px, py) in {"shear": (0.22, 0.10), "Langmuir": (0.66, 0.36), "convective": (0.5, 0.70)}.items():
         axis.text(px, py, area, fontsize=6.5, color="0.45", ha="center", style="italic")
     axis.set_aspect("equal")

@@ -8,9 +8,9 @@ from scipy.stats import norm
 
 from lespost.compare.settings import ComparisonSettings
 from lespost.compare.table import compare
+from lespost.records.settings import ProcessingSettings
 from lespost.statistics.bootstrap import bootstrap_standard_error
 from lespost.statistics.samples import effective_samples
-from lespost.records.settings import ProcessingSettings
 from tests.unit.compare.toy_series import (
     autoregressive,
     effective_samples_of_mean,

@@ -18,8 +18,8 @@ from lespost.compare.uncertainty import Side
 from lespost.compare.verdicts import judge
 from lespost.errors import DataError, RequestError
 from lespost.records.processing import process
-from lespost.series import make_series
 from lespost.records.settings import ProcessingSettings
+from lespost.series import make_series
 from tests.unit.compare.toy_series import autoregressive, toy
 
 PLAIN = ProcessingSettings(despike="none", detrend="mean")

@@ -15,8 +15,8 @@ from lespost.errors import RecordError
 from lespost.records.despike import median_spikes, moving_median, phase_space_spikes
 from lespost.records.noise import autocovariances, lag_zero_noise_variance, plateau_noise_variance
 from lespost.records.processing import fill_short_gaps, process
-from lespost.series import make_series
 from lespost.records.settings import ProcessingSettings
+from lespost.series import make_series
 
 PLAIN = ProcessingSettings(despike="none", detrend="mean", largest_gap_filled=0)
 

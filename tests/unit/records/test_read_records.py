@@ -13,9 +13,9 @@ import xarray as xr
 
 from lespost.errors import RecordError
 from lespost.records.read import read_record, read_series
-from lespost.series import compass_to_simulation, magnetic_to_true, make_series
 from lespost.records.settings import RecordSettings
 from lespost.records.write import write_series
+from lespost.series import compass_to_simulation, magnetic_to_true, make_series
 from tests.unit.records.record_files import moored_profiler
 
 

@@ -64,7 +64,7 @@ def test_fluxes_of_the_roll() -> None:
 def test_vorticity_and_tilting_of_the_roll() -> None:
     # second-order differences of the flow itself on a fine grid, away from the edges
     y = np.linspace(0, 100, 801)[None, :]
-    z = np.linspace(-50, 0, 801)[:, None]
+    z = np.linspace(-50, 0, 401)[:, None]
     zero = np.zeros_like(y)
     u, v, w = ROLL.u(zero, y, z), ROLL.v(zero, y, z), ROLL.w(zero, y, z)
 
@@ -74,11 +74,11 @@ def test_vorticity_and_tilting_of_the_roll() -> None:
     omega = (d(w, 1) - d(v, 0), d(u, 0), -d(u, 1))
     exact = ROLL.vorticity(y, z)
     for found, expected in zip(omega, exact, strict=True):
-        assert found == pytest.approx(np.broadcast_to(expected, found.shape), abs=1e-4 * np.abs(expected).max())
+        assert np.max(np.abs(found - expected)) < 1e-4 * np.max(np.abs(expected))
     tilting = [exact[1] * d(c, 1) + exact[2] * d(c, 0) for c in (u, v, w)]
     expected = ROLL.stretching_and_tilting(y, z)
     for n in (1, 2):
-        assert tilting[n] == pytest.approx(expected[n], abs=2e-4 * np.abs(expected[n]).max())
+        assert np.max(np.abs(tilting[n] - expected[n])) < 2e-4 * np.max(np.abs(expected[n]))
     # streamwise enstrophy production by the Stokes drift: mean over y of omega_x times the tilting
     product = (exact[0] * ROLL.stokes_tilting(y, z, 0.068, 0.1))[:, :-1].mean(axis=1)
     expected_production = ROLL.stokes_enstrophy_production(z[:, 0], 0.068, 0.1)
