@@ -24,6 +24,8 @@ def cli() -> None:
 
     \b
     solve        a small wave-averaged large-eddy run: langmuir, shear or convective, or your own forcing
+    closed-form  a flow in closed form: roll, cellular, lines, abc, rotation, strain, shear
+    random       random fields of prescribed variances, spacing, axis and memory
     record       an invented field record (OceanSITES/CF) from another realisation of a run
     checksums    write or check the checksums of the shipped data
     """
@@ -46,8 +48,10 @@ def command_line(context: click.Context) -> str:
             continue
         if isinstance(parameter, click.Argument):
             words.insert(2, _option_text(value))
-        elif parameter.is_flag:  # type: ignore[attr-defined]
+        elif getattr(parameter, "is_flag", False):
             words.append(parameter.opts[0])
+        elif parameter.multiple:
+            words += [f"{parameter.opts[0]} {_option_text(one)}" for one in value]
         else:
             words.append(f"{parameter.opts[0]} {_option_text(value)}")
     return " ".join(words)
@@ -69,6 +73,16 @@ def _ramp(text: str | None, option: str) -> Any:
         raise ToyRequestError(
             f'{option} "{text}": write one number, or times in seconds with values, for example "0:0.002,7200:0.008".'
         ) from None
+
+
+def _numbers(text: str, option: str) -> tuple[float, ...]:
+    """Times in seconds from a text with commas."""
+    from toy_fields.errors import ToyRequestError
+
+    try:
+        return tuple(float(part) for part in text.split(","))
+    except ValueError:
+        raise ToyRequestError(f'{option} "{text}": write seconds with commas, for example "3600,4200".') from None
 
 
 _FORCING_OPTIONS = (
@@ -114,7 +128,6 @@ def solve(context: click.Context, case: str, out: Path, threads: int, replace: b
     misses. The same command gives the same bytes on the same machine, whatever the number of threads.
     """
     from toy_fields import cases
-    from toy_fields.errors import ToyRequestError
     from toy_fields.progress import progress
     from toy_fields.solver.output import dataset
     from toy_fields.solver.run import run
@@ -125,18 +138,92 @@ def solve(context: click.Context, case: str, out: Path, threads: int, replace: b
         name = option.removeprefix("--").replace("-", "_")
         options[name] = _ramp(options[name], option)
     if options["output_times"] is not None:
-        try:
-            options["output_times"] = tuple(float(part) for part in options["output_times"].split(","))
-        except ValueError:
-            raise ToyRequestError(
-                f'--output-times "{options["output_times"]}": write seconds with commas, for example "3600,4200".'
-            ) from None
+        options["output_times"] = _numbers(options["output_times"], "--output-times")
     chosen = cases.changed(cases.case(case), {key: value for key, value in options.items() if value is not None})
     with progress(case, chosen.output_times[-1]) as report:
         snapshots = list(run(chosen, threads, report))
     fields = dataset(chosen, snapshots).assign_attrs(command=command_line(context))
     write_store(fields, out, replace)
     click.echo(f"{out}: {len(snapshots)} snapshots of {chosen.grid.nx} × {chosen.grid.ny} × {chosen.grid.nz}")
+
+
+def _grid_options(function: Callable[..., None]) -> Callable[..., None]:
+    for option, kind, default, text in reversed(
+        (
+            ("--nx", int, 64, "points along x (even)"), ("--ny", int, 64, "points along y (even)"),
+            ("--nz", int, 32, "levels"), ("--length-x", float, 200.0, "length of the box along x [m]"),
+            ("--length-y", float, 200.0, "length of the box along y [m]"), ("--depth", float, 50.0, "depth of the box [m]"),
+        )
+    ):
+        function = click.option(option, type=kind, default=default, show_default=True, help=text)(function)
+    return function
+
+
+_ARRANGEMENT = click.option(
+    "--arrangement", type=click.Choice(["collocated", "staggered", "spectral"]), default="spectral", show_default=True
+)
+_TIMES = click.option("--times", default="0", show_default=True, metavar="T,T,...", help="times of the snapshots [s]")
+
+
+@cli.command("closed-form")
+@click.argument("flow", type=click.Choice(["roll", "cellular", "lines", "abc", "rotation", "strain", "shear"]))
+@click.option("--out", type=click.Path(path_type=Path), required=True, help="a .zarr store or .nc file to write")
+@_grid_options
+@_ARRANGEMENT
+@_TIMES
+@click.option(
+    "--set", "settings", multiple=True, metavar="NAME=VALUE", help="a parameter of the flow, e.g. --set jet=0.03; may repeat"
+)
+@click.option("--continuum", is_flag=True, help="amplitudes of the continuum, not those free of divergence on the grid")
+@click.option("--replace", is_flag=True, help="write over an existing file")
+@click.pass_context
+def closed_form(
+    context: click.Context, flow: str, out: Path, arrangement: str, times: str, settings: tuple[str, ...], continuum: bool,
+    replace: bool, **sizes: Any,
+) -> None:
+    """Writes a flow whose statistics are formulas, in double precision."""
+    from toy_fields.closed_form.make import make_flow
+    from toy_fields.solver.grid import Grid
+    from toy_fields.store import write_plain
+
+    grid = Grid(**sizes)
+    fields = make_flow(flow, grid, arrangement, _numbers(times, "--times"), settings, continuum)
+    write_plain(fields.assign_attrs(command=command_line(context)), out, replace)
+    click.echo(f"{out}: {flow}, {arrangement}")
+
+
+@cli.command()
+@click.option("--out", type=click.Path(path_type=Path), required=True, help="a .zarr store or .nc file to write")
+@_grid_options
+@_ARRANGEMENT
+@_TIMES
+@click.option("--variance-along", type=float, default=3e-5, show_default=True, help="along the axis [m2 s-2]")
+@click.option("--variance-across", type=float, default=6e-5, show_default=True, help="across the axis [m2 s-2]")
+@click.option("--variance-vertical", type=float, default=5e-5, show_default=True, help="[m2 s-2]")
+@click.option("--spacing", type=float, default=50.0, show_default=True, help="between convergence lines [m]")
+@click.option("--axis", type=float, default=0.0, show_default=True, help="direction of the streaks [degree from +x]")
+@click.option("--slope", type=float, default=-5 / 3, show_default=True, help="of the spectrum beyond its peak")
+@click.option("--alignment", type=float, default=2.0, show_default=True, help="0: cells without direction")
+@click.option("--integral-time", type=float, default=600.0, show_default=True, help="[s]")
+@click.option("--tracer", type=float, default=0.0, show_default=True, help="log-deviation of a streak tracer; 0: none")
+@click.option("--seed", type=int, default=1, show_default=True)
+@click.option("--replace", is_flag=True, help="write over an existing file")
+@click.pass_context
+def random(
+    context: click.Context, out: Path, arrangement: str, times: str, replace: bool, nx: int, ny: int, nz: int,
+    length_x: float, length_y: float, depth: float, **plan: Any,
+) -> None:
+    """Writes random solenoidal fields of prescribed statistics; exact variances in every snapshot."""
+    from toy_fields.closed_form.layout import check_arrangement
+    from toy_fields.random_fields import RandomField, RandomPlan
+    from toy_fields.solver.grid import Grid
+    from toy_fields.store import write_plain
+
+    grid = Grid(nx, ny, nz, length_x, length_y, depth)
+    field = RandomField(RandomPlan(grid, arrangement=check_arrangement(arrangement), **plan))
+    fields = field.snapshots(_numbers(times, "--times"), "float32")
+    write_plain(fields.assign_attrs(command=command_line(context)), out, replace)
+    click.echo(f"{out}: random fields, {arrangement}")
 
 
 @cli.command()

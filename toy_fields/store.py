@@ -98,10 +98,34 @@ def write_store(fields: xr.Dataset, path: Path, replace: bool = False) -> None:
         os.replace(partial, path)
 
 
+def write_plain(fields: xr.Dataset, path: Path, replace: bool = False) -> None:
+    """Writes `fields` as they are, a netCDF-4 file for .nc, else a zarr store (format 3); whole or not at all.
+
+    Raises ToyRequestError where `path` exists and `replace` is false, or ends in neither .nc nor .zarr.
+    """
+    check_target(path, replace)
+    if path.suffix not in (".nc", ".zarr"):
+        raise ToyRequestError(f"{path}: let the name end in .nc or .zarr, so that the format is plain.")
+    path.parent.mkdir(parents=True, exist_ok=True)
+    encoding: dict[Any, dict[str, Any]] = {name: {"_FillValue": None} for name in fields.variables}
+    with tempfile.TemporaryDirectory(dir=path.parent, prefix=".toy_store_") as folder:
+        partial = Path(folder) / path.name
+        if path.suffix == ".nc":
+            fields.to_netcdf(partial, encoding=encoding)
+        else:
+            fields.to_zarr(partial, mode="w", zarr_format=3, consolidated=False, encoding=encoding)
+        if path.is_dir():
+            shutil.rmtree(path)
+        os.replace(partial, path)
+
+
 def check_target(path: Path, replace: bool) -> None:
-    """Raises ToyRequestError where something stands at `path` already and `replace` is false."""
+    """Raises ToyRequestError where something stands at `path` that is not to be replaced: anything if `replace` is
+    false, else a folder that is no zarr store, for replacing removes it whole."""
     if path.exists() and not replace:
         raise ToyRequestError(f"{path} exists: choose another name with --out, or add --replace to write over it.")
+    if path.is_dir() and not (path / "zarr.json").is_file():
+        raise ToyRequestError(f"{path} is a folder but no zarr store: it is not replaced; choose another name with --out.")
 
 
 def checksum_lines(folder: Path, names: list[str]) -> list[str]:

@@ -19,7 +19,7 @@ from toy_fields.solver.forcing import Forcing, Ramp
 from toy_fields.solver.grid import Grid
 from toy_fields.solver.output import dataset
 from toy_fields.solver.run import run, snapshot, start
-from toy_fields.store import write_store
+from toy_fields.store import check_target, write_store
 
 SMALL = {"nx": 12, "ny": 12, "nz": 24, "output_times": (60.0,)}
 
@@ -82,6 +82,14 @@ def test_an_existing_store_is_kept(tmp_path: Path) -> None:
     small = changed(case("langmuir"), SMALL)
     with pytest.raises(ToyRequestError, match="--replace"):
         write_store(dataset(small, list(run(small))), tmp_path / "a.zarr")
+
+
+def test_a_folder_that_is_no_store_is_never_removed(tmp_path: Path) -> None:
+    (tmp_path / "thesis.zarr").mkdir()
+    (tmp_path / "thesis.zarr" / "chapter.txt").write_text("text")
+    with pytest.raises(ToyRequestError, match="no zarr store"):
+        check_target(tmp_path / "thesis.zarr", replace=True)
+    assert (tmp_path / "thesis.zarr" / "chapter.txt").exists()
 
 
 @pytest.mark.parametrize(
