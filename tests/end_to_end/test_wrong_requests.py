@@ -25,7 +25,7 @@ def recipe(repository: Path, folder: Path, extra: str = "", path: str | None = N
         ("[regime]\nbootstrap_samples = 'many'\n", ("line 4", "regime")),
         ("[run]\ntitle = 3\n", ("[run].title", "3")),
         ("[compute]\nmemory = \"2 m\"\n", ("memory",)),
-        ("[compute]\nthreads = 0\n", ("threads", "0")),
+        ("[compute]\nthreads = -1\n", ("threads", "-1")),
         ("[comparison]\nconfidence = 1.2\n", ("confidence", "1.2")),
         ("[forcing]\nmixed_layer_depth = -3.0\n", ("mixed_layer_depth", "-3")),
         ("[forcing]\nfriction_velocity = 0.006\nstress = 0.1\n", ("friction_velocity", "stress")),
@@ -44,7 +44,7 @@ def test_a_wrong_recipe_is_named_by_key_and_exits_2(
 
 
 def test_all_faults_of_a_recipe_are_told_at_once(repository: Path, tmp_path: Path) -> None:
-    path = recipe(repository, tmp_path, "[compute]\nthreads = 0\nthread = 3\n[regimes]\n")
+    path = recipe(repository, tmp_path, "[compute]\nthreads = -1\nthread = 3\n[regimes]\n")
     done = lespost("run", path, expect=2)
     assert "threads" in done.stderr and "thread:" in done.stderr and "[regimes]" in done.stderr
 
