@@ -17,9 +17,12 @@ SurfaceLayerReference = Literal["none", "base"]
 #: Wave height below which four wave heights no longer measure the wave-affected depth [m]; common practice, no source.
 SMALLEST_WAVE_HEIGHT = 0.02
 
+#: Friction velocity below which there is no wind for a Langmuir number to be about [m s-1]; common practice, no source.
+CALM = 1e-4
+
 
 def turbulent_langmuir_number(friction_velocity: Any, surface_stokes_drift: Any) -> np.ndarray:
-    """La_t = (u* / |u_s(0)|)^(1/2) (McWilliams, Sullivan & Moeng 1997); NaN without waves or without wind."""
+    """La_t = (u* / |u_s(0)|)^(1/2) (McWilliams, Sullivan & Moeng 1997); NaN without waves or in calm air."""
     ustar, drift = np.asarray(friction_velocity, float), np.abs(np.asarray(surface_stokes_drift, float))
     return np.sqrt(_ratio(ustar, drift))
 
@@ -34,7 +37,7 @@ def surface_layer_langmuir_number(friction_velocity: Any, surface_layer_drift: A
 
 
 def _ratio(ustar: np.ndarray, drift: np.ndarray) -> np.ndarray:
-    known = (drift > 0) & (ustar > 0)
+    known = (drift > 0) & (ustar >= CALM)
     return np.where(known, ustar / np.where(known, drift, 1.0), np.nan)
 
 

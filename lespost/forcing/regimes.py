@@ -13,7 +13,7 @@ import numpy as np
 
 ForcingRegime = Literal["shear", "langmuir", "convective", "mixed", "undetermined"]
 
-#: A single production that makes this share of the estimate names the regime (the lines drawn by Belcher et al. 2012).
+#: Share of the estimate at which Belcher et al. (2012) draw the lines of their diagram.
 DOMINANT_SHARE = 0.9
 #: A production counts where it makes at least this share; common practice, no source.
 COUNTING_SHARE = 0.25
@@ -66,16 +66,13 @@ def dissipation_from_scales(friction_velocity: float, surface_stokes_drift: floa
 def forcing_regime(shear: float, langmuir: float, convective: float) -> ForcingRegime:
     """The regime that the parts of the dissipation estimate point to.
 
-    One part alone counting (share of at least a quarter) or reaching nine tenths names the regime; several counting parts are
-    "mixed"; an unknown part makes it "undetermined" unless the others could not be outweighed, which is not assumed.
+    One part alone counting (share of at least a quarter) names the regime; several counting parts are "mixed"; an unknown
+    part makes it "undetermined", since it might outweigh the others.
     """
     parts = {"shear": shear, "langmuir": langmuir, "convective": convective}
     if any(np.isnan(part) for part in parts.values()) or not sum(parts.values()) > 0:
         return "undetermined"
     total = sum(parts.values())
-    for name, part in parts.items():
-        if part / total >= DOMINANT_SHARE:
-            return name  # type: ignore[return-value]
     counting = [name for name, part in parts.items() if part / total >= COUNTING_SHARE]
     return counting[0] if len(counting) == 1 else "mixed"  # type: ignore[return-value]
 

@@ -14,13 +14,19 @@ import numpy as np
 from lespost.constants import VON_KARMAN
 from lespost.errors import RequestError
 from lespost.forcing.langmuir import (
+    CALM,
     SurfaceLayerReference,
     cell_axis_angle,
     projected,
     surface_layer_langmuir_number,
     turbulent_langmuir_number,
 )
-from lespost.forcing.regimes import ForcingRegime, dissipation_from_scales, forcing_regime
+from lespost.forcing.regimes import (
+    COUNTING_SHARE,
+    ForcingRegime,
+    dissipation_from_scales,
+    forcing_regime,
+)
 
 #: What each number means, where more than one meaning is in use.
 CONVENTIONS = {
@@ -33,11 +39,12 @@ CONVENTIONS = {
              "reference drift: {reference}",
     "la_proj": "la_t projected on the cell axis (Van Roekel et al. 2012)",
     "alpha_deg": "cell axis from the stress towards the waves [degree] (Van Roekel et al. 2012)",
-    "hoenikker": "4 b0 delta / (us0 ustar^2), delta = transport / us0 (Li & Garrett 1995)",
+    "hoenikker": "4 b0 delta / (us0 ustar^2), delta = transport / us0 (Li & Garrett 1995); undefined for b0 < 0",
     "h_over_l_langmuir": "b0 h / (ustar^2 us0) (Belcher et al. 2012), without the von Karman constant",
     "obukhov": "-ustar^3 / (0.40 b0) [m]; negative is unstable",
     "dissipation": "terms of epsilon h / ustar^3 (Belcher et al. 2012)",
-    "forcing_regime": "one term with a share of at least 0.9, or the only one with at least 0.25; else mixed",
+    "forcing_regime": "the only dissipation term with a share of at least 0.25; else mixed; undetermined where waves that count go "
+                      "against the wind",
 }
 
 
@@ -100,19 +107,31 @@ def scales(
     alpha = 0.0 if aligned and us0 > 0 else float(cell_axis_angle(ustar, us0, misalignment, h, wave_height))
     la_t = float(turbulent_langmuir_number(ustar, us0))
     parts = dissipation_from_scales(ustar, us0, b0, h)
-    regime = forcing_regime(*parts)
-    if ustar == 0 and b0 > 0:
-        regime = "convective"
-    waves_and_wind = us0 > 0 and ustar > 0
+    waves_and_wind = us0 > 0 and ustar >= CALM
     return Scales(
         ustar=ustar, b0=b0, wstar=float((b0 * h) ** (1 / 3)) if b0 > 0 else np.nan, us0=us0, la_t=la_t,
         la_sl=float(surface_layer_langmuir_number(ustar, layer_drift, reference)),
         la_proj=float(projected(la_t, alpha, misalignment)), alpha_deg=alpha,
-        hoenikker=4 * b0 * stokes_depth / (us0 * ustar**2) if waves_and_wind else np.nan,
+        hoenikker=4 * b0 * stokes_depth / (us0 * ustar**2) if waves_and_wind and b0 >= 0 else np.nan,
         h_over_l_langmuir=b0 * h / (ustar**2 * us0) if waves_and_wind else np.nan,
         obukhov=-(ustar**3) / (VON_KARMAN * b0) if b0 != 0 else np.nan,
-        dissipation_shear=parts[0], dissipation_langmuir=parts[1], dissipation_convective=parts[2], forcing_regime=regime,
+        dissipation_shear=parts[0], dissipation_langmuir=parts[1], dissipation_convective=parts[2],
+        forcing_regime=_regime(parts, ustar, b0, misalignment),
     )
+
+
+def _regime(parts: tuple[float, float, float], ustar: float, b0: float, misalignment: float) -> ForcingRegime:
+    """The regime of the dissipation estimate where the estimate holds.
+
+    In calm air only cooling is left to stir. Waves against the wind take energy from the turbulence or give less than the
+    moduli say, so that an estimate in which they count says nothing.
+    """
+    if ustar < CALM:
+        return "convective" if b0 > 0 else "undetermined"
+    opposed = np.cos(np.radians(misalignment)) < -1e-12
+    if opposed and parts[1] >= COUNTING_SHARE * sum(parts):
+        return "undetermined"
+    return forcing_regime(*parts)
 
 
 def conventions(la_sl_reference: SurfaceLayerReference = "none") -> dict[str, str]:

@@ -67,8 +67,9 @@ def classify(profiles: xr.Dataset, forcing: xr.Dataset, windows: Sequence[Window
 def window_state(mean: xr.Dataset, forcing: xr.Dataset, settings: RegimeSettings) -> WindowState:
     """Depth and scales of one window. mean: window means; forcing: the window's snapshots."""
     driving = forcing.mean("time", keep_attrs=True)
-    angle = np.radians(forcing["stress_direction"].values)
-    driving["stress_direction"] = float(np.degrees(np.arctan2(np.sin(angle).mean(), np.cos(angle).mean())))
+    for name in ("stress_direction", "stokes_direction"):  # angles have no arithmetic mean: 179 and -179 degrees are neighbours
+        angle = np.radians(forcing[name].values)
+        driving[name] = float(np.degrees(np.arctan2(np.sin(angle).mean(), np.cos(angle).mean())))
     ustar = float(driving["friction_velocity"])
     given = float(forcing.attrs.get("mixed_layer_depth", np.nan))
     if np.isfinite(given):
