@@ -143,8 +143,9 @@ def _table(file: Path, lines: list[str]) -> RawSpectra:
 
 
 def _split(header: str) -> list[str]:
-    separator = r"[,;]" if re.search(r"[,;]", header) else r"\s{2,}|\t"
-    return [word.strip() for word in re.split(separator, header)]
+    if re.search(r"[,;]", header):
+        return [word.strip() for word in re.split(r"[,;]", header)]
+    return re.findall(r"[^\s(\[]+(?:\s*[(\[][^)\]]*[)\]])?", header)
 
 
 def _unit(column: str) -> str:

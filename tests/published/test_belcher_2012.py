@@ -47,6 +47,7 @@ def test_limits() -> None:
 
 
 @pytest.mark.parametrize(("parts", "regime"), [((0.95, 0.03, 0.02), "shear"), ((0.2, 0.6, 0.2), "langmuir"),
-                                               ((0.4, 0.4, 0.2), "mixed"), ((0.0, 0.05, 0.95), "convective"), ((np.nan, 1.0, 0.0), "undetermined")])
+                                               ((0.4, 0.4, 0.2), "mixed"), ((0.0, 0.05, 0.95), "convective"),
+                                               ((np.nan, 1.0, 0.0), "undetermined")])
 def test_regime_named(parts: tuple[float, float, float], regime: str) -> None:
     assert forcing_regime(*parts) == regime

@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 
 from lespost.forcing import velocity_scales as v
+from lespost.forcing.scales import scales
 
 USTAR, DRIFT, WSTAR = np.sqrt(3.72e-5), 0.06791774, 9.131046e-3
 
@@ -35,3 +36,12 @@ def test_published_entrainment_laws_spread_by_fifteen_percent() -> None:
                                    v.entrainment_grant_belcher_2009(USTAR, DRIFT, WSTAR),
                                    v.entrainment_shear_and_langmuir(USTAR, DRIFT, WSTAR))]
     assert 1.10 < max(laws) / min(laws) < 1.16  # derived from the three formulas
+
+
+def test_three_definitions_of_the_convective_velocity_are_not_one() -> None:
+    """Trap: B0 h, 2.5 ∫⟨w'b'⟩ dz and 0.9 B0 h; the first two agree for the flux profile B0 (1 - 1.2 ζ), the last never does."""
+    b0, h = 2.307e-8, 33.0
+    ours = scales(friction_velocity=USTAR, buoyancy_flux=b0, layer_depth=h).wstar
+    zeta = np.linspace(0, 1, 20001)
+    assert ours**3 == pytest.approx(2.5 * h * np.trapezoid(b0 * (1 - 1.2 * zeta), zeta), rel=1e-9)  # derived in closed form
+    assert (0.9 * b0 * h) ** (1 / 3) / ours == pytest.approx(0.9655, abs=1e-4)  # 3.5 % lower
