@@ -11,6 +11,10 @@ from lespost.errors import DataError
 from lespost.forcing.settings import BulkFormula
 
 
+#: Wind below which the smooth-flow drag is held constant [m s-1]; common practice, no source.
+SLOWEST_WIND = 1e-3
+
+
 def drag_coefficient(wind_speed: Any, formula: BulkFormula = "large_yeager_2009", temperature: float = 15.0,
                      gravity: float = 9.81) -> np.ndarray:
     """Neutral drag coefficient at 10 m [1] for `wind_speed` [m s-1], any shape.
@@ -47,6 +51,8 @@ def air_viscosity(temperature: float) -> float:
 def _coare(wind: float, temperature: float, gravity: float) -> float:
     if wind == 0.0:
         return float("inf")
+    # Below a millimetre per second the logarithm of smooth flow turns negative; the drag there moves nothing.
+    wind = max(wind, SLOWEST_WIND)
     charnock, viscosity = float(charnock_coare(wind)), air_viscosity(temperature)
     friction = 0.035 * wind
     for _ in range(200):

@@ -29,6 +29,11 @@ def test_charnock_parameter_never_falls_below_zero_in_light_winds() -> None:
     assert np.all(np.isfinite(light)) and np.all(np.diff(light) < 0)  # smooth flow: drag falls with wind
 
 
+def test_faintest_wind_has_a_finite_small_stress() -> None:
+    stress = wind_stress(np.array([1e-9, 1e-6, 1e-3, 1e-2]), "coare_3_5")
+    assert np.all(stress > 0) and np.all(np.diff(stress) > 0) and stress[2] < 1e-8
+
+
 def test_calm_has_no_stress_by_any_law() -> None:
     for formula in ("large_yeager_2009", "large_yeager_2004", "large_pond_1981", "coare_3_5"):
         assert wind_stress(0.0, formula) == 0.0  # type: ignore[arg-type]
