@@ -10,7 +10,6 @@ from lespost.constants import AIR_DENSITY, VON_KARMAN
 from lespost.errors import DataError
 from lespost.forcing.settings import BulkFormula
 
-
 #: Wind below which the smooth-flow drag is held constant [m s-1]; common practice, no source.
 SLOWEST_WIND = 1e-3
 
