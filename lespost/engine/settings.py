@@ -55,8 +55,8 @@ class ComputeSettings(Settings):
 
     @property
     def block_memory(self) -> int:
-        """Bytes that one block may take so that every reader and every computing thread can hold one."""
-        return self.memory // (self.thread_count + self.readers)
+        """Bytes that one block may take at most: the whole budget, then blocks are worked on one after the other."""
+        return self.memory
 
     def deadline(self, started: float) -> float | None:
         """Moment [s since the epoch] by which to have stopped, from `walltime` and the batch queue; None: no limit.

@@ -7,7 +7,9 @@ What is computed from a block stands in `lespost.profiles.one_pass`.
 
 from __future__ import annotations
 
+import collections
 import itertools
+import threading
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 
@@ -22,6 +24,10 @@ from lespost.profiles.settings import ProfilesSettings
 #: A block of this size keeps every thread busy and the overhead per block below one part in twenty; larger ones only take
 #: memory, and their pages cost more than the arithmetic on them.
 GOOD_BLOCK_BYTES = 32 * 10**6
+
+#: Fields of a block that are read at the same time: a chunk is decoded by one processor, so that one field's chunk alone
+#: would leave the others idle. Readers of libraries that are not safe to share take turns by themselves.
+TOGETHER = 2
 
 
 @dataclass(frozen=True)
@@ -136,18 +142,41 @@ def snapshot_block(
     layout = layout_of(fields, settings.prandtl_number) if layout is None else layout
     reader = SlabReader(fields, layout, time_index) if reader is None else reader
     dtype = np.dtype(np.float64 if layout.itemsize > 4 else np.float32)
-    arrays: dict[str, Pieces] = {}
-    first: dict[str, int] = {}
-    for name in layout.names:
-        start, stop = span_needed(layout, name, z0, z1)
-        halo, main = reader.read(name, start, stop)
-        arrays[name] = halo.astype(dtype, copy=False), main.astype(dtype, copy=False)
-        first[name] = start
-    return Block(layout, settings, time_index, z0, z1, arrays, first)
+    spans = {name: span_needed(layout, name, z0, z1) for name in layout.names}
+    pieces = _read_together(reader, spans)
+    arrays = {name: (pieces[name][0].astype(dtype, copy=False), pieces[name][1].astype(dtype, copy=False)) for name in spans}
+    return Block(layout, settings, time_index, z0, z1, arrays, {name: start for name, (start, _) in spans.items()})
+
+
+def _read_together(reader: SlabReader, spans: Mapping[str, tuple[int, int]]) -> dict[str, Pieces]:
+    """The pieces of all fields, `TOGETHER` fields at a time."""
+    waiting = collections.deque(spans.items())
+    found: dict[str, Pieces] = {}
+    failed: list[BaseException] = []
+
+    def work() -> None:
+        while waiting and not failed:
+            try:
+                name, (start, stop) = waiting.popleft()
+                found[name] = reader.read(name, start, stop)
+            except IndexError:  # another thread took the last one
+                return
+            except BaseException as error:
+                failed.append(error)
+
+    threads = [threading.Thread(target=work, daemon=True) for _ in range(min(TOGETHER, len(spans)) - 1)]
+    for thread in threads:
+        thread.start()
+    work()
+    for thread in threads:
+        thread.join()
+    if failed:
+        raise failed[0]
+    return found
 
 
 def block_memory(layout: Layout, fields: xr.Dataset, z0: int, z1: int) -> int:
-    """Bytes held while a block is read and computed: its levels, what is read ahead, and one field in transit twice."""
+    """Bytes held while a block is read and computed: its levels, what is read ahead, and fields in transit twice."""
     total = largest = 0
     for name in layout.names:
         start, stop = span_needed(layout, name, z0, z1)
@@ -155,16 +184,17 @@ def block_memory(layout: Layout, fields: xr.Dataset, z0: int, z1: int) -> int:
         count = (stop - start + ahead) * layout.level_bytes(name)
         total += count
         largest = max(largest, count)
-    return total + largest
+    return total + TOGETHER * largest
 
 
 def plan_blocks(
     fields: xr.Dataset, settings: ProfilesSettings, memory: int, times: Sequence[int] | None = None,
     layout: Layout | None = None,
 ) -> list[BlockPlan]:
-    """Cut the snapshots into blocks of at most `memory` bytes each: whole snapshots if they fit, else slabs of whole chunks.
+    """Cut the snapshots into blocks: whole snapshots where they are small, else slabs of whole chunks.
 
-    times: indices of the snapshots wanted; default: all. memory: the budget divided by the blocks held at once.
+    times: indices of the snapshots wanted; default: all. memory: the budget; a block takes half of it at most, so that one
+    can be read while another is computed, or all of it where one chunk of levels is that large.
     Raises RequestError if not even one chunk of levels fits.
     """
     layout = layout_of(fields, settings.prandtl_number) if layout is None else layout
@@ -181,19 +211,19 @@ def plan_blocks(
 def _slab_edges(layout: Layout, fields: xr.Dataset, memory: int) -> list[int]:
     """Edges of the slabs: 0, then one below multiples of the chunk, so that the halo above is in the chunks at hand."""
     bytes_of_level = sum(layout.level_bytes(name) for name in layout.names)
-    if layout.nz * bytes_of_level <= GOOD_BLOCK_BYTES and block_memory(layout, fields, 0, layout.nz) <= memory:
+    if layout.nz * bytes_of_level <= GOOD_BLOCK_BYTES and block_memory(layout, fields, 0, layout.nz) <= memory // 2:
         return [0, layout.nz]
     chunk = max(level_chunk(fields, name, layout.levels(name)) for name in layout.names)
     fits = 0
     while fits * bytes_of_level < GOOD_BLOCK_BYTES and fits < layout.nz:
-        if block_memory(layout, fields, 1, min(1 + fits + chunk, layout.nz)) > memory:
+        if block_memory(layout, fields, 1, min(1 + fits + chunk, layout.nz)) > (memory // 2 if fits else memory):
             break
         fits += chunk
     if fits == 0:
         smallest = block_memory(layout, fields, 1, min(1 + chunk, layout.nz))
         raise RequestError(
             f"[compute].memory is too small: one block of {chunk} levels needs {smallest / 1e6:.3g} MB and may take "
-            f"{memory / 1e6:.3g} MB. Raise it, lower [compute].threads, or store the fields in chunks of fewer levels."
+            f"{memory / 1e6:.3g} MB. Raise it, or store the fields in chunks of fewer levels."
         )
     inner = [edge - 1 for edge in range(fits, layout.nz, fits) if edge > 1]
     return [0, *inner, layout.nz]
