@@ -25,6 +25,10 @@ TOLERANCE = 0.15
 #: entrainment can carry more heat than the surface does.
 UNRESOLVED_FACTOR = 5.0
 UNRESOLVED_LEAST = 0.5
+#: Snapshots of a window that count as independent at most when their scatter judges a mismatch (common practice, no source).
+INDEPENDENT = 3
+#: A mismatch within so many standard errors of the sampled flux is chance.
+CHANCE = 3.0
 #: Largest angle between the declared and the found direction of the stress, degree (common practice, no source).
 ANGLE = 30.0
 
@@ -62,6 +66,21 @@ def surface_flux(profiles: xr.Dataset, name: str) -> tuple[float, bool]:
     if not np.isfinite(values).all():
         return math.nan, total
     return float(np.polyfit(faces[-1 - FACES : -1], values, 1)[1]), total
+
+
+def surface_flux_error(profiles: xr.Dataset, *names: str) -> float:
+    """Standard error of the flux at z = 0 from the scatter between snapshots, as the modulus over `names`; 0 for one snapshot.
+
+    Snapshots closer than a turnover repeat each other, so the scatter is taken as that of a few independent ones.
+    """
+    count = profiles.sizes["time"]
+    if count < 2:
+        return 0.0
+    variance = 0.0
+    for name in names:
+        singles = np.array([surface_flux(profiles.isel(time=[t]), name)[0] for t in range(count)])
+        variance += float(singles.var(ddof=1)) / min(count, INDEPENDENT)
+    return math.sqrt(variance)
 
 
 def _largest(profiles: xr.Dataset, *names: str) -> float:
@@ -104,7 +123,8 @@ def check_momentum_flux(profiles: xr.Dataset, declared: Declared) -> list[Findin
     statement = f"the declared friction velocity {declared.friction_velocity:.4g} m s-1 means a stress of {stated:.3g} m2 s-2"
     found = found if total else _largest(profiles, "uw", "vw")
     return _compare(
-        "momentum-flux", statement, stated, found, "m2 s-2", total, named_factor(stated / found, declared), "Check [forcing]."
+        "momentum-flux", statement, stated, found, "m2 s-2", total, named_factor(stated / found, declared), "Check [forcing].",
+        surface_flux_error(profiles, "uw", "vw"),
     )
 
 
@@ -118,13 +138,18 @@ def check_temperature_flux(profiles: xr.Dataset, declared: Declared) -> list[Fin
     return _compare(
         "temperature-flux", f"the declared surface temperature flux is {stated:.3g} K m s-1", stated, found, "K m s-1", total,
         named_factor(stated / found, declared, heat=True), "Check [forcing] and its sign (upward flux cools the water).",
+        surface_flux_error(profiles, "wtheta"),
     )
 
 
 def _compare(
-    code: str, statement: str, stated: float, found: float, units: str, total: bool, named: str, remedy: str
+    code: str, statement: str, stated: float, found: float, units: str, total: bool, named: str, remedy: str,
+    error: float,
 ) -> list[Finding]:
+    """error: standard error of `found` by sampling; a mismatch that chance explains is none."""
     ratio = stated / found
+    if ratio > 0 and abs(stated - found) <= CHANCE * error:
+        return []
     least, largest = (1.0 / (1.0 + TOLERANCE), 1.0 + TOLERANCE) if total else (UNRESOLVED_LEAST, UNRESOLVED_FACTOR)
     if least <= ratio <= largest:
         return []
