@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import json
 from collections.abc import Mapping
+from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -17,6 +18,7 @@ from lespost.constants import AIR_DENSITY, EARTH_ROTATION, GRAVITY, REFERENCE_DE
 from lespost.errors import DataError, RecipeError
 from lespost.findings import Decision, Hint
 from lespost.forcing import buoyancy, stress
+from lespost.forcing.series import with_series
 from lespost.forcing.settings import ForcingSettings, StokesSettings
 from lespost.forcing.stokes_profile import resolve_stokes
 
@@ -24,8 +26,8 @@ from lespost.forcing.stokes_profile import resolve_stokes
 class Sources:
     """Looks quantities up in recipe, hints and defaults, and keeps an account of where each came from."""
 
-    def __init__(self, hints: Mapping[str, Hint], time: np.ndarray, z: np.ndarray) -> None:
-        self.hints, self.time, self.z = hints, time, z
+    def __init__(self, hints: Mapping[str, Hint], time: np.ndarray, z: np.ndarray, tabled: frozenset[str] = frozenset()) -> None:
+        self.hints, self.time, self.z, self.tabled = hints, time, z, tabled
         self.decisions: list[Decision] = []
 
     def note(self, subject: str, choice: str, how: Any, evidence: str) -> None:
@@ -36,7 +38,7 @@ class Sources:
         """A number constant in time; NaN if neither recipe, hints nor default know it."""
         words = name.replace("_", " ")
         if given is not None:
-            self.note(words, f"{given:g} {units}", "recipe", f"[forcing].{name}")
+            self.note(words, f"{given:g} {units}", "recipe", f"[forcing].{name}{self._overruled(name, given, units)}")
             return float(given)
         if name in self.hints:
             value = float(np.mean(self.hints[name].value))
@@ -48,11 +50,21 @@ class Sources:
         self.note(words, "unknown", "default", f"neither [forcing].{name} nor the files state it")
         return float("nan")
 
+    def _overruled(self, name: str, given: float, units: str) -> str:
+        """What the files say, where the recipe says something else by more than rounding."""
+        hint = self.hints.get(name)
+        if hint is None:
+            return ""
+        values = np.asarray(hint.value, float)
+        if np.allclose(values, given, rtol=1e-3):
+            return ""
+        return f"; the files say {float(values.mean()):g} {units} ({hint.evidence})"
+
     def series(self, name: str, given: float | None, units: str, key: str = "") -> np.ndarray | None:
         """A quantity over time (constant if stated so); None if nobody states it."""
         words = name.replace("_", " ")
         if given is not None:
-            self.note(words, f"{given:g} {units}", "recipe", key or f"[forcing].{name}")
+            self.note(words, f"{given:g} {units}", "recipe", f"{key or f'[forcing].{name}'}{self._overruled(name, given, units)}")
             return np.full(self.time.size, float(given))
         hint = self.hints.get(name)
         if hint is None:
@@ -62,7 +74,8 @@ class Sources:
             raise DataError(f"{hint.evidence}: {values.size} values for {self.time.size} snapshots; "
                             "name the forcing in the recipe.")
         low, high = float(np.min(values)), float(np.max(values))
-        self.note(words, f"{low:g} {units}" if low == high else f"{low:g} to {high:g} {units}", "metadata", hint.evidence)
+        how = "recipe" if name in self.tabled else "metadata"
+        self.note(words, f"{low:g} {units}" if low == high else f"{low:g} to {high:g} {units}", how, hint.evidence)
         return np.broadcast_to(values, self.time.shape).copy()
 
 
@@ -72,14 +85,16 @@ def resolve_forcing(
 ) -> xr.Dataset:
     """The forcing at the snapshots' `time` [s] on levels `z` and faces `z_face` [m, upward, surface last].
 
-    base: folder that [stokes].spectrum_file is relative to. Returns (time): friction_velocity, stress_direction,
+    base: folder that [stokes].spectrum_file and [forcing].series are relative to. Returns (time): friction_velocity, stress_direction,
     surface_temperature_flux, surface_salinity_flux, surface_buoyancy_flux (upward; absorbed sunlight not included, see
     `shortwave`), us0, stokes_direction, stokes_transport, stokes_depth, significant_wave_height; (time, z) stokes_u, stokes_v
     (cell means); (time, z_face) stokes_u_face, stokes_v_face; scalars gravity, reference_density, specific_heat,
     thermal_expansion, haline_contraction, coriolis_parameter. attrs["decisions"]: JSON list of where each came from.
     Raises RecipeError for contradictions, DataError for series that do not fit.
     """
-    sources = Sources(hints, np.asarray(time, float), np.asarray(z, float))
+    clock = np.asarray(time, float)
+    known, tabled = with_series(forcing, stokes, hints, clock, Path(base) if base is not None else Path())
+    sources = Sources(known, clock, np.asarray(z, float), tabled)
     gravity = sources.scalar("gravity", forcing.gravity, GRAVITY, "m s-2")
     density = sources.scalar("reference_density", forcing.reference_density, REFERENCE_DENSITY, "kg m-3")
     heat = sources.scalar("specific_heat", forcing.specific_heat, SPECIFIC_HEAT_TEOS10, "J kg-1 K-1", "TEOS-10")

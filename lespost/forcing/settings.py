@@ -7,13 +7,32 @@ from __future__ import annotations
 
 from typing import Annotated, Literal
 
-from pydantic import Field, model_validator
+from pydantic import BeforeValidator, Field, model_validator
 
 from lespost.settings import InUnit, Settings
 
 BulkFormula = Literal["large_yeager_2009", "large_yeager_2004", "large_pond_1981", "coare_3_5"]
 WaterType = Literal["I", "IA", "IB", "II", "III"]
-Direction = Annotated[float, InUnit("degree"), Field(ge=-360, le=360)]
+#: Keys of which at most one may be given, whether in the section or in its table over time.
+EXCLUSIVE = (("friction_velocity", "stress", "wind_speed"), ("stress_direction", "wind_from_compass"),
+             ("surface_heat_flux", "surface_temperature_flux"), ("latitude", "coriolis_parameter"))
+
+_COMPASS_POINTS = "N NNE NE ENE E ESE SE SSE S SSW SW WSW W WNW NW NNW".split()
+
+
+def _no_compass_words(value: object) -> object:
+    """A compass word says neither its sense nor where +x points: refused, with the number it would have."""
+    if isinstance(value, str) and value.strip().upper() in _COMPASS_POINTS:
+        number = 22.5 * _COMPASS_POINTS.index(value.strip().upper())
+        raise ValueError(
+            f"give degrees counter-clockwise from +x (towards), or what it comes from under a key of its own "
+            f"(..._from_compass = {number:g}) with [forcing].x_axis_compass_bearing"
+        )
+    return value
+
+
+Direction = Annotated[float, InUnit("degree"), Field(ge=-360, le=360), BeforeValidator(_no_compass_words)]
+Compass = Annotated[float, InUnit("degree"), Field(ge=0, le=360)]
 
 
 class ForcingSettings(Settings):
@@ -60,11 +79,15 @@ class ForcingSettings(Settings):
         None, description="Specific heat of the water.")
     mixed_layer_depth: Annotated[float, InUnit("m"), Field(gt=0)] | None = Field(
         None, description="Boundary-layer depth h to use instead of the one found in the profiles.")
+    series: str = Field(
+        "", description='CSV table of forcing over time, relative to the recipe: a column "time [s]" of run time, and columns named '
+        'like the keys of this section with their units, e.g. "wind_speed [m s-1]"; also stokes_surface_speed, stokes_direction.')
+    series_start: str = Field(
+        "", description="Calendar time (ISO 8601) of run time zero, where the times of the table are calendar times.")
 
     @model_validator(mode="after")
     def _one_of_each(self) -> ForcingSettings:
-        for group in (("friction_velocity", "stress", "wind_speed"), ("stress_direction", "wind_from_compass"),
-                      ("surface_heat_flux", "surface_temperature_flux"), ("latitude", "coriolis_parameter")):
+        for group in EXCLUSIVE:
             given = [name for name in group if getattr(self, name) is not None]
             if len(given) > 1:
                 raise ValueError(f"{' and '.join(given)} say the same thing: give only one of them")
@@ -81,9 +104,10 @@ class StokesSettings(Settings):
     """[stokes]: the waves' Stokes drift."""
 
     kind: Literal["auto", "none", "monochromatic", "profile", "bulk_breivik_2014", "bulk_breivik_2016", "spectrum",
-                  "theory_wave"] = Field(
-        "auto", description="How the profile is made. auto: what the keys below or the files state; none: no waves; theory_wave: "
-        "from the wind alone (Li et al. 2017).")
+                  "theory_wave", "pierson_moskowitz"] = Field(
+        "auto", description="How the profile is made. auto: what the keys below or the files state; none: no waves; theory_wave, "
+        "pierson_moskowitz: a fully developed sea from the wind alone, with the losses of spreading (Li et al. 2017) or all in one "
+        "direction.")
     surface_speed: Annotated[float, InUnit("m s-1"), Field(ge=0, le=3)] | None = Field(
         None, description="Stokes drift at the surface.")
     amplitude: Annotated[float, InUnit("m"), Field(gt=0, le=30)] | None = Field(
@@ -97,6 +121,9 @@ class StokesSettings(Settings):
         None, description="Stokes transport, for the bulk profiles.")
     direction: Direction | None = Field(
         None, description="Direction towards which the drift points, degrees counter-clockwise from +x; default: the stress.")
+    waves_from_compass: Compass | None = Field(
+        None, description="Compass direction the waves come from, degrees clockwise from north; needs "
+        "[forcing].x_axis_compass_bearing.")
     water_depth: Annotated[float, InUnit("m"), Field(gt=0)] | None = Field(
         None, description="Water depth, where it is not deep for the waves.")
     profile_z: tuple[float, ...] = Field((), description="Heights (m, negative) of a profile given by hand.")
@@ -107,8 +134,9 @@ class StokesSettings(Settings):
 
     @model_validator(mode="after")
     def _consistent(self) -> StokesSettings:
-        if self.wavelength is not None and self.wavenumber is not None:
-            raise ValueError("wavelength and wavenumber say the same thing: give only one of them")
+        for one, other in (("wavelength", "wavenumber"), ("amplitude", "surface_speed"), ("direction", "waves_from_compass")):
+            if getattr(self, one) is not None and getattr(self, other) is not None:
+                raise ValueError(f"{one} and {other} say the same thing: give only one of them")
         if self.amplitude is not None and self.wave_height is not None and self.kind == "monochromatic":
             raise ValueError("amplitude and wave_height say the same thing: give only one of them")
         if not len(self.profile_z) == len(self.profile_u) or (self.profile_v and len(self.profile_v) != len(self.profile_z)):

@@ -7,6 +7,7 @@ drift is linear. Text layouts are read in `spectrum_text`.
 
 from __future__ import annotations
 
+import re
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -119,6 +120,21 @@ def frequency_factor(units: str, where: str) -> float:
     return conversion(units or "Hz", "Hz", where)[0]
 
 
+def refuse_unclear_angular(frequency_units: str, density_units: str, both: bool, where: str) -> None:
+    """Raises DataError where the axis is in radians per second and nothing says whether the density is per radian or per cycle.
+
+    "m2 s" is written for either, a factor of 2π apart; a directional density's "rad-1" speaks of direction.
+    """
+    if "rad" not in frequency_units.lower():
+        return
+    if both:
+        raise DataError(f"{where}: a directional density over angular frequency; give the frequencies in Hz and the density in "
+                        '"m2 s rad-1", per hertz and radian of direction.')
+    if not re.search(r"rad|hz|hertz", density_units.lower()):
+        raise DataError(f'{where}: frequencies in "{frequency_units}" and a density in "{density_units}" leave open whether it is per '
+                        'radian per second or per hertz, a factor of 6.28; write "m2 s rad-1" or "m2 Hz-1".')
+
+
 def density_unit(text: str) -> str:
     """A density's unit in a spelling that UDUNITS reads: "m^2/Hz/deg" becomes "m2 s degree-1"."""
     out = text.strip().replace("**", "").replace("^", "").replace("*", " ")
@@ -181,6 +197,7 @@ def _from_dataset(data: Any, file: Path) -> RawSpectra:
         raise DataError(f"{name}: no direction axis; give its coordinate the standard name {FROM_NAMES[0]} or {TO_NAMES[0]}.")
     axes = [frequency_axis.dimensions[0], *([direction_axis.dimensions[0]] if both else [])]
     density = _arranged(variable, axes, file)
+    refuse_unclear_angular(units_text, str(getattr(variable, "units", "")), both, name)
     unit = density_unit(str(getattr(variable, "units", "")))
     per_radian_per_second = "rad" in units_text.lower() and "rad" in unit and not both
     radians = 2 * np.pi if per_radian_per_second else 1.0

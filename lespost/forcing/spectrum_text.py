@@ -11,7 +11,7 @@ from pathlib import Path
 import numpy as np
 
 from lespost.errors import DataError
-from lespost.forcing.spectrum_files import RawSpectra, density_unit, frequency_factor
+from lespost.forcing.spectrum_files import RawSpectra, density_unit, frequency_factor, refuse_unclear_angular
 from lespost.units import conversion, convertible
 
 #: value (frequency), as in the realtime layout.
@@ -155,6 +155,9 @@ def _unit(column: str) -> str:
 
 def _columns(file: Path, table: np.ndarray, columns: list[str]) -> RawSpectra:
     names = [re.sub(r"[(\[].*", "", column).strip().lower() for column in columns]
+    if names and re.match(r"(t|period)$", names[0]):
+        raise DataError(f'{file}: the first column "{columns[0]}" holds periods; convert the spectrum to variance per hertz over '
+                        "frequency (E(f) = E(T) T², f = 1/T).")
     units = [_unit(column) for column in columns]
     place = {"frequency": 0, "density": 1}
     for number, name in enumerate(names):
@@ -174,6 +177,7 @@ def _columns(file: Path, table: np.ndarray, columns: list[str]) -> RawSpectra:
     if columns:
         unit = units[place["frequency"]]
         factor = frequency_factor(unit or "Hz", f"{file}, first column")
+        refuse_unclear_angular(unit, units[place["density"]], False, str(file))
         unit = density_unit(units[place["density"]]) or "m2 s"
         if not convertible(unit.replace("rad-1", ""), "m2 s"):
             raise DataError(f'{file}: the density is in "{units[place["density"]]}", which is no m2/Hz; convert it to '

@@ -46,7 +46,9 @@ def resolve_stokes(settings: StokesSettings, sources: Sources, forcing: ForcingS
     stored = {"stokes_profile_u", "stokes_profile_v"} & set(sources.hints)
     if settings.kind == "auto" and settings.surface_speed is None and stored:
         return _from_profile_hints(sources, z_face)
-    direction = _direction(settings, sources, stress_direction)
+    direction = _direction(settings, sources, forcing, stress_direction)
+    if settings.kind == "pierson_moskowitz":
+        return _fully_developed(settings, sources, forcing, direction, z_face, gravity)
     if settings.kind in ("bulk_breivik_2014", "bulk_breivik_2016"):
         us0, transport = float(settings.surface_speed or 0), float(settings.transport or 0)
         form = forms.breivik_2014 if settings.kind == "bulk_breivik_2014" else forms.breivik_2016
@@ -58,8 +60,19 @@ def resolve_stokes(settings: StokesSettings, sources: Sources, forcing: ForcingS
     return _monochromatic(settings, sources, direction, z_face, gravity)
 
 
-def _direction(settings: StokesSettings, sources: Sources, stress_direction: np.ndarray) -> np.ndarray:
-    found = sources.series("stokes_direction", settings.direction, "degree", "[stokes].direction")
+def _stated_direction(settings: StokesSettings, forcing: ForcingSettings) -> tuple[float | None, str]:
+    """(direction towards which the drift points, counter-clockwise from +x [degree], the recipe's words for it)."""
+    if settings.waves_from_compass is None:
+        return settings.direction, "[stokes].direction"
+    if forcing.x_axis_compass_bearing is None:
+        raise RecipeError("[stokes].waves_from_compass needs [forcing].x_axis_compass_bearing (90 where +x points east).")
+    towards = forcing.x_axis_compass_bearing - (settings.waves_from_compass + 180.0)
+    return -((-towards + 180.0) % 360.0 - 180.0), "[stokes].waves_from_compass"
+
+
+def _direction(settings: StokesSettings, sources: Sources, forcing: ForcingSettings, stress_direction: np.ndarray) -> np.ndarray:
+    stated, key = _stated_direction(settings, forcing)
+    found = sources.series("stokes_direction", stated, "degree", key)
     if found is not None:
         return found
     sources.note("Stokes direction", "that of the stress", "default", "nobody states it; write [stokes].direction")
@@ -115,12 +128,36 @@ def _monochromatic(settings: StokesSettings, sources: Sources, direction: np.nda
                    lambda z: forms.monochromatic(z, 1.0, wavenumber, depth_m, gravity) / at_surface, ratio, z_face, height)
 
 
-def _theory_wave(settings: StokesSettings, sources: Sources, forcing: ForcingSettings, direction: np.ndarray, z_face: np.ndarray,
-                 gravity: float) -> StokesOnGrid:
+def _wind(settings: StokesSettings, sources: Sources, forcing: ForcingSettings) -> float:
+    """Mean wind at 10 m [m s-1] that a fully developed sea is made of."""
     wind = sources.series("wind_speed", forcing.wind_speed, "m s-1")
     if wind is None or not np.all(wind > 0):
-        raise RecipeError('[stokes]: kind = "theory_wave" needs [forcing].wind_speed.')
-    us0, transport = forms.theory_wave_bulk(float(wind.mean()), gravity)
+        raise RecipeError(f'[stokes]: kind = "{settings.kind}" needs [forcing].wind_speed.')
+    return float(wind.mean())
+
+
+def _fully_developed(settings: StokesSettings, sources: Sources, forcing: ForcingSettings, direction: np.ndarray,
+                     z_face: np.ndarray, gravity: float) -> StokesOnGrid:
+    """The unidirectional spectrum of Pierson & Moskowitz (1964) for the wind, integrated, with its tail."""
+    from lespost.forcing.spectrum import Spectrum, stokes_drift, summary
+    from lespost.forcing.wave_models import peak_frequency_of_wind, pierson_moskowitz
+
+    # 19.5 m wind over 10 m wind of the logarithmic profile, as Li et al. (2017) take it
+    peak = peak_frequency_of_wind(1.075 * _wind(settings, sources, forcing), gravity)
+    frequency = peak * np.geomspace(0.3, 30.0, 1200)
+    spectrum = Spectrum(frequency, pierson_moskowitz(frequency, peak, gravity=gravity), source="Pierson-Moskowitz spectrum")
+    numbers = summary(spectrum, settings.water_depth, True, gravity)
+    sources.note("Stokes drift", f"{numbers.us0:.4g} m s-1, transport {numbers.transport:.4g} m2 s-1", "recipe",
+                 f"unidirectional Pierson-Moskowitz spectrum, peak {peak:.3g} Hz")
+    return _scaled(sources, np.full(sources.time.size, numbers.us0), direction,
+                   lambda z: stokes_drift(z, spectrum, settings.water_depth, True, gravity)[0] / numbers.us0, numbers.decay_scale,
+                   z_face, settings.wave_height or numbers.hs)
+
+
+def _theory_wave(settings: StokesSettings, sources: Sources, forcing: ForcingSettings, direction: np.ndarray, z_face: np.ndarray,
+                 gravity: float) -> StokesOnGrid:
+    wind = _wind(settings, sources, forcing)
+    us0, transport = forms.theory_wave_bulk(wind, gravity)
     sources.note("Stokes drift", f"{us0:.4g} m s-1, transport {transport:.4g} m2 s-1", "recipe",
                  "fully developed sea from the wind (Li et al. 2017), profile of Breivik et al. 2016")
     return _scaled(sources, np.full(sources.time.size, us0), direction, lambda z: forms.breivik_2016(z, us0, transport) / us0,
@@ -144,8 +181,9 @@ def _from_spectrum(settings: StokesSettings, sources: Sources, forcing: ForcingS
     from lespost.forcing.spectrum_files import read_spectrum
 
     spectrum = read_spectrum((base or Path()) / settings.spectrum_file, x_axis_compass_bearing=forcing.x_axis_compass_bearing)
-    if settings.direction is not None:
-        spectrum = spectrum.towards(settings.direction)
+    stated, _ = _stated_direction(settings, forcing)
+    if stated is not None:
+        spectrum = spectrum.towards(stated)
     depth, tail = settings.water_depth, settings.spectral_tail
     numbers = summary(spectrum, depth, tail, gravity)
     sources.note("Stokes drift", f"{numbers.us0:.4g} m s-1 at the surface", "recipe",
@@ -155,7 +193,7 @@ def _from_spectrum(settings: StokesSettings, sources: Sources, forcing: ForcingS
         return _scaled(sources, np.full(sources.time.size, numbers.us0), stress_direction,
                        lambda z: stokes_drift(z, spectrum, depth, tail, gravity)[0] / numbers.us0, numbers.decay_scale, z_face,
                        numbers.hs)
-    if spectrum.has_direction and settings.direction is None and forcing.x_axis_compass_bearing is None:
+    if spectrum.has_direction and stated is None and forcing.x_axis_compass_bearing is None:
         sources.note("Stokes direction", f"{numbers.direction:.4g} degree", "default",
                      "compass directions of the spectrum with +x pointing east; write [forcing].x_axis_compass_bearing")
 
@@ -178,12 +216,12 @@ def _from_profile_hints(sources: Sources, z_face: np.ndarray) -> StokesOnGrid:
 
 
 def _extended(z: np.ndarray, values: np.ndarray, z_face: np.ndarray) -> np.ndarray:
-    """Values at faces from cell means: linear inside, the last slope carried on to the surface."""
+    """Values at faces from cell means: linear inside; at the surface the exponential whose means the two top cells are."""
     inner = np.interp(z_face, z, values)
-    if z.size > 1:
-        slope = (values[-1] - values[-2]) / (z[-1] - z[-2])
-        above = z_face > z[-1]
-        inner[above] = values[-1] + slope * (z_face[above] - z[-1])
+    if z.size > 1 and values[-1] * values[-2] > 0 and abs(values[-1]) > abs(values[-2]):
+        decay = np.log(values[-1] / values[-2]) / (z[-1] - z[-2])
+        reach = decay * (z_face[-1] - z_face[-2])
+        inner[-1] = values[-1] * reach / -np.expm1(-reach)
     return inner
 
 

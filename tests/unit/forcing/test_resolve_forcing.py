@@ -57,8 +57,9 @@ def test_recipe_wins_over_files_and_is_named() -> None:
     assert found["us0"].values == pytest.approx(np.full(3, 0.1))
     assert found["stokes_depth"].values == pytest.approx(np.full(3, 40 / (4 * np.pi)))
     assert float(found["thermal_expansion"]) == 1e-4
-    assert decision(found, "friction velocity") == {"subject": "friction velocity", "choice": "0.01 m s-1", "how": "recipe",
-                                                    "evidence": "[forcing].friction_velocity"}
+    assert decision(found, "friction velocity") == {
+        "subject": "friction velocity", "choice": "0.01 m s-1", "how": "recipe",
+        "evidence": '[forcing].friction_velocity; the files say 0.007 m s-1 (variable "friction_velocity")'}
 
 
 def test_stress_and_wind_make_friction_velocity() -> None:
