@@ -9,7 +9,6 @@ import numpy as np
 import pandas as pd
 import xarray as xr
 
-from lespost.errors import RecipeError
 from lespost.findings import Decision
 from lespost.pipeline.files import write_csv
 from lespost.pipeline.plan import RunPlan
@@ -20,14 +19,11 @@ def compare_with_records(
 ) -> tuple[pd.DataFrame | None, tuple[Decision, ...]]:
     """(the comparison table, what was decided in reading the records); (None, ()) where the recipe names no record.
 
-    Raises RecipeError if there are records but no instrument to hold against them.
+    Raises RecordError for records that cannot be used, DataError where they cannot be paired with the samples.
     """
     recipe = plan.loaded.recipe
     if not recipe.record:
         return None, ()
-    if not samples:
-        raise RecipeError(f"recipe {plan.loaded.path.name}: there is a [[record]] but no [[instrument]]: describe the instrument "
-                          "that made the record, so that the fields can be sampled as it would have.")
     from lespost.compare.latex import write_latex
     from lespost.compare.table import compare
     from lespost.records.read import read_record

@@ -45,3 +45,10 @@ class Recipe(Settings):
             if repeated:
                 raise ValueError(f"two [[{kind}]] tables share the name {sorted(repeated)[0]!r}; give each its own name")
         return self
+
+    @model_validator(mode="after")
+    def _records_have_instruments(self) -> Recipe:
+        if self.record and not self.instrument:
+            raise ValueError("there is a [[record]] but no [[instrument]]: describe the instrument that made the record, so that "
+                             "the fields can be sampled as it would have")
+        return self

@@ -40,9 +40,9 @@ def comparison_figure(table: pd.DataFrame, instrument: str, record: str) -> Figu
     for row in grid:
         row[0].set_ylabel("depth (m)")
     grid[0, 0].invert_yaxis()
-    handles = [Line2D([], [], color="k", marker="o", markersize=4, label=f"record {record}"),
+    handles = [Line2D([], [], color="k", marker="o", markersize=4, label=f"record: {record}"),
                Line2D([], [], color="#0072B2", marker="s", markersize=4, markerfacecolor="white",
-                      linestyle="--", label=f"virtual {instrument}")]
+                      linestyle="--", label=f"virtual instrument: {instrument}")]
     handles += [Line2D([], [], color=colour, marker=style.VERDICT_MARKER[verdict], linestyle="none", markersize=5,
                        label=verdict) for verdict, colour in style.VERDICT_COLOUR.items()]
     figure.legend(handles=handles, loc="outside upper left", ncol=5)
