@@ -51,23 +51,31 @@ def command(as_json: bool, no_waves: bool, la_sl_reference: Any, **given: Any) -
 
     lespost scales --ustar 0.0061 --us0 0.068 --decay-wavenumber 0.1047 --depth 33
     """
+    from lespost.forcing.expected import LAWS
+    from lespost.forcing.expected import UNITS as EXPECTED_UNITS
     from lespost.forcing.one_forcing import one_forcing
 
     found = one_forcing(given, no_waves, la_sl_reference)
     numbers = found.scales.to_dict()
     if as_json:
-        known = {name: None if value != value else value for name, value in numbers.items()}
-        click.echo(json.dumps({**known, "conventions": found.conventions}, allow_nan=False))
+        also = {"inertial_period": found.inertial_period, "ekman_scale": found.ekman_scale, **found.expected.to_dict()}
+        conventions = {**found.conventions, "also": {**_known(also), "laws": LAWS}}
+        click.echo(json.dumps({**_known(numbers), "conventions": conventions}, allow_nan=False))
         return
     rows = [(name, _text(value), UNITS[name], _meaning(name, found.conventions)) for name, value in numbers.items()]
     if found.inertial_period == found.inertial_period:
         rows.append(("inertial period", _text(found.inertial_period / 3600), "h", "2 pi / |f|"))
         rows.append(("Ekman scale", _text(found.ekman_scale), "m", "ustar / |f|"))
+    rows += [(f"expected {name}", _text(value), EXPECTED_UNITS[name], LAWS[name]) for name, value in found.expected.to_dict().items()]
     widths = [max(len(row[column]) for row in rows) for column in range(3)]
     for name, value, unit, meaning in rows:
         click.echo(f"{name:<{widths[0]}}  {value:>{widths[1]}}  {unit:<{widths[2]}}  {meaning}".rstrip())
     for name in ("water", "stress", "wave_height"):
         click.echo(f"{name.replace('_', ' ')}: {found.conventions[name]}")
+
+
+def _known(numbers: dict[str, Any]) -> dict[str, Any]:
+    return {name: None if value != value else value for name, value in numbers.items()}
 
 
 def _text(value: Any) -> str:

@@ -14,6 +14,7 @@ from pydantic import ValidationError
 from lespost.constants import AIR_DENSITY, GRAVITY
 from lespost.errors import RequestError
 from lespost.forcing.dispersion import angular_frequency
+from lespost.forcing.expected import ExpectedLevels, expected_levels
 from lespost.forcing.langmuir import SurfaceLayerReference
 from lespost.forcing.resolve import resolve_forcing
 from lespost.forcing.scales import Scales, conventions, scales
@@ -22,13 +23,14 @@ from lespost.forcing.settings import ForcingSettings, StokesSettings
 
 @dataclass(frozen=True)
 class OneForcing:
-    """Scales, the conventions behind them, and what only rotation adds: inertial_period [s], ekman_scale u*/|f| [m] (NaN without
-    a latitude or at the equator)."""
+    """Scales, the conventions behind them, the levels that published laws expect, and what only rotation adds:
+    inertial_period [s], ekman_scale u*/|f| [m] (NaN without a latitude or at the equator)."""
 
     scales: Scales
     conventions: dict[str, str]
     inertial_period: float
     ekman_scale: float
+    expected: ExpectedLevels
 
 
 #: Command-line options by the settings' field that holds their bounds.
@@ -85,7 +87,8 @@ def one_forcing(given: dict[str, Any], no_waves: bool = False, la_sl_reference: 
         f"{forcing.bulk_formula} with the neutral wind at 10 m, air density {forcing.air_density or AIR_DENSITY:g} kg m-3")
     f = abs(float(resolved["coriolis_parameter"]))
     rotating = f > 0
-    return OneForcing(result, words, 2 * np.pi / f if rotating else np.nan, ustar / f if rotating else np.nan)
+    return OneForcing(result, words, 2 * np.pi / f if rotating else np.nan, ustar / f if rotating else np.nan,
+                      expected_levels(result, h))
 
 
 def _refuse_contradictions(known: dict[str, Any], no_waves: bool) -> None:
