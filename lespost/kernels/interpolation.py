@@ -10,6 +10,9 @@ import numpy as np
 
 from lespost.kernels.compiler import kernel
 
+#: Points of a polynomial in each horizontal direction, by its name.
+ORDERS = {"linear": 2, "cubic": 4, "quintic": 6}
+
 
 @kernel
 def lagrange_weights(t: float, order: int, out: np.ndarray) -> None:

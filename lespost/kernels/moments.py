@@ -8,8 +8,16 @@ level gives the same bits whoever computes it. `lespost.kernels.block` walks the
 from __future__ import annotations
 
 from lespost.kernels.compiler import kernel
-from lespost.kernels.rows import Float64, Stored, departures, departures_between
-from lespost.kernels.sums import add_higher, add_scalar_second, add_scalar_third, add_second, sum_of_products, sum_of_span
+from lespost.kernels.rows import CENTRED, Float64, Stored, departures, departures_between
+from lespost.kernels.sums import (
+    add_higher,
+    add_scalar_second,
+    add_scalar_third,
+    add_second,
+    sum_of_products,
+    sum_of_products_between,
+    sum_of_span,
+)
 
 #: Columns of the face sums: vertical velocity variance and fluxes of u, v and the scalar.
 FACE = ("ww", "uw", "vw", "wc")
@@ -39,12 +47,12 @@ def level_moments(
         for j in range(band * tile_ny, (band + 1) * tile_ny):
             departures(u, j, u_arrangement, mean_u[0], mean_u[1], up)
             departures(v, j, v_arrangement, mean_v[0], mean_v[1], vp)
-            departures_between(w_lower, w_upper, j, 0, mean_lower[0], mean_upper[0], mean_w, wp)
+            departures_between(w_lower, w_upper, j, CENTRED, mean_lower[0], mean_upper[0], mean_w, wp)
             add_second(up, vp, wp, columns)
             if higher:
                 add_higher(up, vp, wp, moments[6:])
             if has_scalar:
-                departures(c, j, 0, mean_c[0], mean_c[1], cp)
+                departures(c, j, CENTRED, mean_c[0], mean_c[1], cp)
                 add_scalar_second(up, vp, wp, cp, scalar_columns)
                 if higher:
                     add_scalar_third(wp, cp, scalar_moments[4:])
@@ -82,15 +90,24 @@ def face_moments(
     offset_v = 0.5 * (mean_v_below[1] + mean_v_above[1])
     offset_c = 0.5 * (mean_c_below[1] + mean_c_above[1])
     for j in range(w.shape[0]):
-        departures(w, j, 0, mean_w[0], mean_w[1], wp)
+        departures(w, j, CENTRED, mean_w[0], mean_w[1], wp)
         out[0] += sum_of_products(wp, wp)
-        departures_between(u_below, u_above, j, u_arrangement, mean_u_below[0], mean_u_above[0], offset_u, other)
-        out[1] += sum_of_products(wp, other)
-        departures_between(v_below, v_above, j, v_arrangement, mean_v_below[0], mean_v_above[0], offset_v, other)
-        out[2] += sum_of_products(wp, other)
+        out[1] += _flux_of_row(wp, u_below, u_above, j, u_arrangement, mean_u_below[0], mean_u_above[0], offset_u, other)
+        out[2] += _flux_of_row(wp, v_below, v_above, j, v_arrangement, mean_v_below[0], mean_v_above[0], offset_v, other)
         if has_scalar:
-            departures_between(c_below, c_above, j, 0, mean_c_below[0], mean_c_above[0], offset_c, other)
-            out[3] += sum_of_products(wp, other)
+            out[3] += _flux_of_row(wp, c_below, c_above, j, CENTRED, mean_c_below[0], mean_c_above[0], offset_c, other)
+
+
+@kernel
+def _flux_of_row(
+    w: Float64, below: Stored, above: Stored, j: int, arrangement: int, reference_below: float, reference_above: float,
+    offset: float, row: Float64,
+) -> float:
+    """Sum of products of w with row j of what is carried, averaged to the face."""
+    if arrangement == CENTRED:
+        return sum_of_products_between(w, below[j], above[j], reference_below, reference_above, offset)
+    departures_between(below, above, j, arrangement, reference_below, reference_above, offset, row)
+    return sum_of_products(w, row)
 
 
 @kernel
@@ -98,6 +115,6 @@ def native_variance(values: Stored, mean: Float64, row: Float64) -> float:
     """Sum of squared departures at the component's own points: what centring takes away is the difference."""
     total = 0.0
     for j in range(values.shape[0]):
-        departures(values, j, 0, mean[0], mean[1], row)
+        departures(values, j, CENTRED, mean[0], mean[1], row)
         total += sum_of_products(row, row)
     return total

@@ -8,7 +8,7 @@ float64. `lespost.kernels.rows` fills the rows; `lespost.kernels.moments` walks 
 from __future__ import annotations
 
 from lespost.kernels.compiler import kernel, reordering_kernel
-from lespost.kernels.rows import Float64
+from lespost.kernels.rows import Float64, Stored
 
 #: Second moments of velocity, in the order of `add_second`; also the ones kept for every tile.
 SECOND = ("uu", "vv", "ww", "uv", "uw", "vw")
@@ -91,6 +91,20 @@ def sum_of_products(a: Float64, b: Float64) -> float:
     total = 0.0
     for i in range(len(a)):
         total += a[i] * b[i]
+    return total
+
+
+@reordering_kernel
+def sum_of_products_between(
+    a: Float64, lower: Stored, upper: Stored, reference_lower: float, reference_upper: float, offset: float
+) -> float:
+    """Sum of products of `a` with the departures of the mean of two levels' rows, without storing these.
+
+    `a` must add up to zero over its level: then a reordered offset, off by a rounding, cannot be felt in the sum.
+    """
+    total = 0.0
+    for i in range(len(a)):
+        total += a[i] * (0.5 * ((lower[i] - reference_lower) + (upper[i] - reference_upper)) - offset)
     return total
 
 

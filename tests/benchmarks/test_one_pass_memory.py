@@ -20,26 +20,33 @@ SHAPE = (64, 128, 128)
 LIMIT = 1.3
 
 RUN = """
-import resource, sys
+import sys
 from pathlib import Path
 from lespost.engine.settings import ComputeSettings
 from tests.benchmarks.stores import canonical
 from tests.benchmarks.test_one_pass_ratio import whole_pass
+
+def status(name):
+    line = next(line for line in open("/proc/self/status") if line.startswith(name))
+    return int(line.split()[1]) * 1024
+
 store, folder, memory = sys.argv[1:]
 fields = canonical(Path(store))
-warm = fields.isel(time=slice(0, 1), x=slice(0, 8), y=slice(0, 8)).load()
-before = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss
+# all libraries and kernels in place before the count begins
+small = fields.isel(time=slice(0, 1), x=slice(0, 8), y=slice(0, 8)).load()
+whole_pass(small, Path(folder), ComputeSettings(progress="none"))
+open("/proc/self/clear_refs", "w").write("5")  # the high-water mark starts again from here
+before = status("VmRSS")
 whole_pass(fields, Path(folder), ComputeSettings(progress="none", memory=memory))
-after = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss
-print("peak", after * 1024, "above start", (after - before) * 1024)
+print("peak", status("VmHWM"), "before", before)
 """
 
 
 def peak(store: Path, folder: Path, memory: str) -> tuple[int, int]:
-    """(peak resident memory, its growth since before the pass) of a pass in a process of its own, bytes."""
+    """(peak resident memory of a pass, memory before it) in a process of its own, bytes."""
     done = subprocess.run([sys.executable, "-c", RUN, str(store), str(folder), memory], capture_output=True, text=True, check=False)
     assert done.returncode == 0, done.stderr
-    found = re.match(r"peak (\d+) above start (-?\d+)", done.stdout)
+    found = re.match(r"peak (\d+) before (\d+)", done.stdout)
     assert found is not None
     return int(found.group(1)), int(found.group(2))
 
@@ -47,19 +54,23 @@ def peak(store: Path, folder: Path, memory: str) -> tuple[int, int]:
 def test_forty_snapshots_take_the_memory_of_four(tmp_path: Path) -> None:
     for times in (4, 40):
         make_store(tmp_path / f"{times}.zarr", SHAPE, times)
-    few, _ = peak(tmp_path / "4.zarr", tmp_path, "2 GB")
+    few, base = peak(tmp_path / "4.zarr", tmp_path, "2 GB")
     many, _ = peak(tmp_path / "40.zarr", tmp_path, "2 GB")
-    print(f"\npeak memory: 4 snapshots {few / 1e6:.0f} MB, 40 snapshots {many / 1e6:.0f} MB, ratio {many / few:.2f}")
+    print(
+        f"\npeak memory: 4 snapshots {few / 1e6:.0f} MB, 40 snapshots {many / 1e6:.0f} MB, ratio {many / few:.2f}; "
+        f"the libraries alone {base / 1e6:.0f} MB"
+    )
+    assert few > base + 10e6
     assert many < LIMIT * few
 
 
 @pytest.mark.parametrize("memory", ["120 MB", "400 MB"])
 def test_the_budget_is_kept(tmp_path: Path, memory: str) -> None:
-    """Growth stays below the budget and what the libraries take on first use (half of the 0.5 GB that the settings state)."""
+    """The fields are 270 MB. What the store's library holds while it decodes is in the estimate; a tenth is allowed over it."""
     make_store(tmp_path / "store.zarr", (128, 256, 256), 2, chunk_levels=8)
-    _, growth = peak(tmp_path / "store.zarr", tmp_path, memory)
-    print(f"\nbudget {memory}: memory grew by {growth / 1e6:.0f} MB")
-    assert growth < float(memory.split()[0]) * 1e6 + 250e6
+    highest, before = peak(tmp_path / "store.zarr", tmp_path, memory)
+    print(f"\nbudget {memory}: memory grew by {(highest - before) / 1e6:.0f} MB from {before / 1e6:.0f} MB")
+    assert 30e6 < highest - before < 1.1 * float(memory.split()[0]) * 1e6
 
 
 def test_every_byte_is_read_once(tmp_path: Path) -> None:

@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 import pytest
 
+from lespost.kernels.block import means_and_ranges
 from lespost.kernels.rows import (
     ALONG_X,
     ALONG_Y,
@@ -22,8 +23,9 @@ def mean_of(values: np.ndarray) -> tuple[float, float, float, float]:
     return level_mean(np.ascontiguousarray(values), np.empty((3, values.shape[1])))
 
 
-def test_mean_and_extremes() -> None:
-    values = np.random.default_rng(0).standard_normal((7, 9)).astype(np.float32)
+@pytest.mark.parametrize("rows", [1, 2, 7, 8])
+def test_mean_and_extremes(rows: int) -> None:
+    values = np.random.default_rng(0).standard_normal((rows, 9)).astype(np.float32)
     reference, offset, low, high = mean_of(values)
     assert reference == values[0, 0]
     assert reference + offset == pytest.approx(values.mean(dtype=np.float64), abs=1e-15)
@@ -41,16 +43,24 @@ def test_a_warm_mean_costs_no_digit_of_the_departures() -> None:
     np.testing.assert_allclose(row, small[5] - small.mean(), rtol=0, atol=1e-17)
 
 
-def test_nan_and_infinity_empty_the_mean_but_not_the_extremes() -> None:
-    for bad in (np.nan, np.inf, -np.inf):
-        for place in ((0, 0), (2, 3)):
-            values = np.arange(20.0).reshape(4, 5)
-            values[place] = bad
-            _, offset, low, high = mean_of(values)
-            assert not np.isfinite(offset)
-            finite = values[np.isfinite(values)]
-            assert low == (finite.min() if bad != -np.inf else bad)
-            assert high == (finite.max() if bad != np.inf else bad)
+@pytest.mark.parametrize("bad", [np.nan, np.inf, -np.inf])
+@pytest.mark.parametrize("place", [(0, 0), (2, 3), (4, 1)])
+def test_values_that_are_not_finite_are_counted_and_passed_over(bad: float, place: tuple[int, int]) -> None:
+    values = np.random.default_rng(3).standard_normal((5, 6))
+    values[place] = bad
+    assert not np.isfinite(mean_of(values)[1])
+    mean, span = np.empty(2), np.empty(3)
+    means_and_ranges(values, np.empty((3, 6)), mean, span)
+    finite = values[np.isfinite(values)]
+    assert np.isnan(mean[1])
+    assert span.tolist() == [finite.min(), finite.max(), 1.0]
+
+
+def test_a_level_without_any_number() -> None:
+    mean, span = np.empty(2), np.empty(3)
+    means_and_ranges(np.full((3, 4), np.nan), np.empty((3, 4)), mean, span)
+    assert np.isnan(span[:2]).all()
+    assert span[2] == 12.0
 
 
 @pytest.mark.parametrize(("arrangement", "axis"), [(ALONG_X, 1), (ALONG_Y, 0)])
