@@ -62,8 +62,12 @@ def test_damage_of_any_kind_costs_a_compilation_only(folder: Path) -> None:
     store = folder / "src" / "__pycache__"
     data = next(store.glob("kernels_here.add*.nbc"))
     index = next(store.glob("kernels_here.add*.nbi"))
+    def flip(content: bytes) -> bytes:
+        middle = len(content) // 2
+        return content[:middle] + bytes([content[middle] ^ 1]) + content[middle + 1 :]
+
     for path, damage in (
-        (data, lambda b: b[: len(b) // 2]), (data, lambda b: b[:-200] + bytes(200)), (data, lambda b: b""),
+        (data, flip), (data, lambda b: b[: len(b) // 2]), (data, lambda b: b[:-200] + bytes(200)), (data, lambda b: b""),
         (index, lambda b: b[:-7]), (index, lambda b: b"\x80\x05garbage"),
     ):  # fmt: skip
         path.write_bytes(damage(path.read_bytes()))
