@@ -41,7 +41,7 @@ def anisotropy(stress: np.ndarray) -> Anisotropy:
     trace = np.trace(stress, axis1=-2, axis2=-1)[..., None, None]
     with np.errstate(invalid="ignore", divide="ignore"):
         b = np.where(trace > 0, stress / np.where(trace > 0, trace, 1.0) - np.eye(3) / 3, np.nan)
-    known = np.isfinite(b).all(axis=(-2, -1))
+    known = np.asarray(np.isfinite(b).all(axis=(-2, -1)))
     values, vectors = np.linalg.eigh(np.where(known[..., None, None], b, 0.0))
     values, vectors = values[..., ::-1], vectors[..., ::-1]
     values = np.where(known[..., None], values, np.nan)

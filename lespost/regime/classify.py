@@ -111,8 +111,8 @@ def _surface_layer_drift(forcing: xr.Dataset, depth: float) -> float:
         return float("nan")
     faces = forcing["z_face"].values
     covered = np.clip(np.minimum(faces[1:], 0.0) - np.maximum(faces[:-1], -0.2 * depth), 0.0, None)
-    parts = [float((forcing[name].values * covered).sum() / covered.sum()) for name in ("stokes_u", "stokes_v")]
-    return float(np.hypot(*parts))
+    u, v = (float((forcing[name].values * covered).sum() / covered.sum()) for name in ("stokes_u", "stokes_v"))
+    return float(np.hypot(u, v))
 
 
 def band_limits(z: np.ndarray, z_face: np.ndarray, depth: float, top: float, bottom: float) -> tuple[float, float]:
@@ -264,4 +264,4 @@ def _agreement(variances: str, told: Mapping[str, str]) -> str:
 
 def dividing_lines(ratios: np.ndarray) -> dict[str, np.ndarray]:
     """La_t of the lines in the regime plane where one production makes nine tenths of the estimate, over h / L_L."""
-    return {kind: regimes.dividing_line(kind, ratios) for kind in ("shear", "langmuir", "convective")}  # type: ignore[arg-type]
+    return {kind: regimes.dividing_line(kind, ratios) for kind in ("shear", "langmuir", "convective")}

@@ -97,6 +97,6 @@ def lagrangian_shear_direction(mean: xr.Dataset, forcing: xr.Dataset, inside: np
         drift = np.nan_to_num(forcing[f"stokes_{component}"].values)
         whole = values if mean.attrs.get("velocity_kind") == "lagrangian" else values + drift
         change.append(float(whole[high] - whole[low]))
-    if not np.hypot(*change) > 0:
+    if not np.hypot(change[0], change[1]) > 0:
         return float("nan")
     return float(np.degrees(np.arctan2(change[1], change[0])))

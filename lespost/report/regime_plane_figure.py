@@ -29,8 +29,10 @@ def regime_plane_figure(regime: pd.DataFrame) -> Figure:
     for _, row in first.iterrows():
         la, ratio = float(row["la_t"]), float(row["h_over_l_langmuir"])
         label = str(row["regime"])
-        look: dict[str, Any] = {"marker": style.REGIME_MARKER.get(label, "o"), "color": style.REGIME_COLOUR.get(label, "k"), "markersize": 7,
-                "markeredgecolor": "white", "markeredgewidth": 0.8, "linestyle": "none", "zorder": 5}
+        look: dict[str, Any] = {
+            "marker": style.REGIME_MARKER.get(label, "o"), "color": style.REGIME_COLOUR.get(label, "k"), "markersize": 7,
+            "markeredgecolor": "white", "markeredgewidth": 0.8, "linestyle": "none", "zorder": 5,
+        }
         if not np.isfinite(la) or not np.isfinite(ratio):
             outside.append(f"{row['window']} ({label})")
             continue
