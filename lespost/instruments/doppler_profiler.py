@@ -14,6 +14,7 @@ from lespost.fields.geometry import domain_lengths
 from lespost.instruments.geometry import OPPOSING_PAIRS, Beams, place_beams
 from lespost.instruments.noise import PingNoise, beam_noise_of_horizontal
 from lespost.instruments.operator import Volumes
+from lespost.instruments.response import profiler_response
 from lespost.instruments.settings import InstrumentSettings
 from lespost.instruments.transforms import error_row, error_velocity, map_to_heights, solution_matrix, to_vectors
 from lespost.instruments.weights import footprint_deviation, footprint_points, range_weights
@@ -115,6 +116,21 @@ class DopplerProfiler:
             out.attrs["samples_itself"] = (f"the beams spread {self.beams.spread:.0f} m, as wide as the periodic domain or wider: "
                                            "they meet the same water twice")
         return out
+
+    def response(self, wavelengths: np.ndarray, speed: float) -> dict[str, xr.DataArray]:
+        """Amplitude factors (wavelength, depth) of the level instrument on horizontal waves in the plane of a pair of beams, shallowest
+        cell first; speed: of the pattern that carries them past [m s-1]. See response.profiler_response."""
+        depths = np.sort(self.depths)
+        factors = profiler_response(self.settings, wavelengths, self.settings.depth - depths, speed)
+        coords = {"depth": depths, "wavelength": ("wavelength", wavelengths, {"units": "m", "long_name": "horizontal wavelength"})}
+        says = {
+            "cell": "factor of the range cell and the footprint",
+            "pair": "factor of the spread of the beams on the velocity component in their plane",
+            "leak": "share of vertical velocity read as horizontal velocity, a quarter wave behind",
+            "averaging": "factor of the ensemble mean of a pattern carried in the plane of the beams",
+        }
+        return {f"response_{name}": xr.DataArray(getattr(factors, name).T, coords, ("wavelength", "depth"),
+                                                 attrs={"units": "1", "long_name": text}) for name, text in says.items()}
 
     def _component_noise(self) -> dict[str, float]:
         """Noise of an ensemble in each component [m s-1]: that of the beams through the least-squares solution."""

@@ -15,12 +15,13 @@ from typing import Any, Protocol
 import numpy as np
 import xarray as xr
 
-from lespost.fields.geometry import domain_lengths
+from lespost.fields.geometry import domain_lengths, spacing
 from lespost.instruments.doppler_profiler import DopplerProfiler
 from lespost.instruments.ensembles import record_ensembles
 from lespost.instruments.noise import PingNoise
 from lespost.instruments.operator import Volumes, make_sampler
 from lespost.instruments.platform import moored_positions
+from lespost.instruments.response import interpolation_response
 from lespost.instruments.settings import InstrumentSettings
 from lespost.instruments.timing import TimePlan, plan_time
 
@@ -42,6 +43,9 @@ class PlacedInstrument(Protocol):
 
     def series(self, recorded: np.ndarray, centres: np.ndarray) -> xr.Dataset:
         """The canonical series of ensemble means (deployments, ensembles, volumes)."""
+
+    def response(self, wavelengths: np.ndarray, speed: float) -> dict[str, xr.DataArray]:
+        """What it makes of waves, for the reader of its series."""
 
 
 KINDS: Mapping[str, Callable[[InstrumentSettings, xr.Dataset], PlacedInstrument]] = {"doppler_profiler": DopplerProfiler.place}
@@ -71,12 +75,22 @@ def sample(
     share = subgrid_share(profiles, series["depth"].values)
     if share is not None:
         series["subgrid_share"] = ("depth", share, {"units": "1", "long_name": "share of velocity variance below the grid"})
+    wavelengths = reported_wavelengths(fields)
+    for name, factor in instrument.response(wavelengths, speed).items():
+        series[name] = factor
+    series["response_interpolation"] = ("wavelength", np.sqrt(interpolation_response(
+        wavelengths / max(spacing(fields)), settings.interpolation)), {"units": "1", "long_name": "factor of horizontal interpolation"})
     series = series.assign_coords(
         deployment_x=("deployment", places[:, 0] % lengths[0], {"units": "m", "long_name": "x of the head"}),
         deployment_y=("deployment", places[:, 1] % lengths[1], {"units": "m", "long_name": "y of the head"}),
     )
     series.attrs.update(_choices(settings, plan, carried))
     return series
+
+
+def reported_wavelengths(fields: xr.Dataset) -> np.ndarray:
+    """(16,) wavelengths [m] from four grid cells to the narrower side of the domain, evenly spaced in the logarithm."""
+    return np.asarray(np.geomspace(4.0 * max(spacing(fields)), min(domain_lengths(fields)), 16))
 
 
 def advection_velocity(profiles: xr.Dataset, depths: np.ndarray, settings: InstrumentSettings) -> np.ndarray:

@@ -96,11 +96,15 @@ def write_series(series: xr.Dataset, path: Path, attributes: Mapping[str, str] |
     positions = _positions(series, count)
     for place, position in positions.items():
         out[place] = position
+    # axes of what an instrument says of itself, such as the wavelengths of its response
+    further = [str(d) for d in series.dims if d not in ("deployment", "time", "depth") and d in series.coords]
+    for axis in further:
+        out[axis] = (axis, np.asarray(series[axis], dtype=np.float64), dict(series[axis].attrs))
     coordinates = " ".join(["time", "depth", *positions, "deployment_name"])
     encoding: dict[str, dict[str, object]] = {
         "time": {"_FillValue": None},
         "depth": {"_FillValue": None},
-        **{name: {"_FillValue": None} for name in positions},
+        **{name: {"_FillValue": None} for name in (*positions, *further)},
     }
     for data_name, variable in series.data_vars.items():
         key = str(data_name)

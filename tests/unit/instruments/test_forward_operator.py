@@ -19,8 +19,8 @@ EVERY = ("linear", "cubic", "quintic", "spectral")
 
 
 def profiler(**changes: object) -> InstrumentSettings:
-    return InstrumentSettings.model_validate({"name": "p", "depth": 30.0, "cell_length": 2.0, "blank": 2.0, "noise": 0.0, "quantisation": 0.0,
-                                              "deployments": 5, **changes})
+    asked = {"name": "p", "depth": 30.0, "cell_length": 2.0, "blank": 2.0, "noise": 0.0, "quantisation": 0.0, "deployments": 5}
+    return InstrumentSettings.model_validate(asked | changes)
 
 
 def points(x: np.ndarray, y: np.ndarray, z: np.ndarray, component: int) -> Volumes:
@@ -90,7 +90,8 @@ def test_linear_interpolation_equals_general_interpolators() -> None:
 @pytest.mark.parametrize(("interpolation", "tolerance"), [("cubic", 0.03), ("quintic", 0.006), ("spectral", 0.003)])
 def test_higher_orders_agree_with_periodic_splines(interpolation: str, tolerance: float) -> None:
     """A quintic spline is another way to the same smooth field: eight cells a wavelength, within the orders' known errors."""
-    fields = water(lambda x, y, z, t: np.sin(2 * np.pi * (x / 16.0 + y / 12.0)) * (1 + 0.1 * z), size=(16, 16, 8), lengths=(32.0, 24.0), depth=8.0)
+    fields = water(lambda x, y, z, t: np.sin(2 * np.pi * (x / 16.0 + y / 12.0)) * (1 + 0.1 * z), size=(16, 16, 8),
+                   lengths=(32.0, 24.0), depth=8.0)
     at = random_places()
     sampler = make_sampler(fields, points(*at.T, 0), interpolation)  # type: ignore[arg-type]
     got = sampler.velocities(sampler.read(0), np.zeros(1), np.zeros(1), Streak())[0]
@@ -223,3 +224,24 @@ def test_every_platform_of_the_grid_gives_the_plane_mean() -> None:
     variances = beams.var(axis=0)
     assert variances[0] == pytest.approx(sine**2 * uu + cosine**2 * ww + 2 * sine * cosine * uw, rel=1e-5)
     assert (variances[0] - variances[1]) / (4 * sine * cosine) == pytest.approx(uw, rel=1e-5)
+
+
+@pytest.mark.parametrize("interpolation", EVERY)
+def test_turning_the_water_and_the_instrument_together_turns_the_velocity(interpolation: str) -> None:
+    """A quarter turn counter-clockwise about the centre of the domain: (x, y) -> (L - y, x), (u, v) -> (-v, u)."""
+    fields = rough(size=(12, 12, 8)).assign_attrs(Lx=24.0, Ly=24.0).assign_coords(x=2.0 * np.arange(12) + 1.0, y=2.0 * np.arange(12) + 1.0)
+    turned = fields.copy()
+    quarter = {name: np.rot90(fields[name].values, -1, axes=(2, 3)) for name in ("u", "v", "w")}  # rows count y upwards
+    turned["u"], turned["v"] = fields["u"].copy(data=-quarter["v"]), fields["v"].copy(data=quarter["u"])
+    turned["w"] = fields["w"].copy(data=quarter["w"])
+    asked = profiler(depth=7.0, blank=0.5, cell_length=0.5, interpolation=interpolation, side_lobes=False)
+    one, two = DopplerProfiler.place(asked, fields), DopplerProfiler.place(asked.model_copy(update={"heading": 90.0}), turned)
+    first = make_sampler(fields, one.volumes, interpolation)  # type: ignore[arg-type]
+    second = make_sampler(turned, two.volumes, interpolation)  # type: ignore[arg-type]
+    x, y = np.array([3.0, 17.3]), np.array([5.5, 0.2])
+    here = one.series(first.velocities(first.read(0), x, y, Streak())[:, None], np.zeros(1))
+    there = two.series(second.velocities(second.read(0), 24.0 - y, x, Streak())[:, None], np.zeros(1))
+    np.testing.assert_allclose(there["u"], -here["v"], atol=1e-11)
+    np.testing.assert_allclose(there["v"], here["u"], atol=1e-11)
+    np.testing.assert_allclose(there["w"], here["w"], atol=1e-11)
+    np.testing.assert_allclose(there["error_velocity"], here["error_velocity"], atol=1e-11)

@@ -21,8 +21,9 @@ def constant(value: float) -> Flow:
 
 
 def water(
-    u: Flow = still, v: Flow = still, w: Flow = still, *, size: tuple[int, int, int] = (32, 32, 40), lengths: tuple[float, float] = (80.0, 80.0),
-    depth: float = 40.0, times: Sequence[float] = (0.0,), staggered: bool = False, dtype: type = np.float64, first: float = 0.5,
+    u: Flow = still, v: Flow = still, w: Flow = still, *, size: tuple[int, int, int] = (32, 32, 40),
+    lengths: tuple[float, float] = (80.0, 80.0), depth: float = 40.0, times: Sequence[float] = (0.0,), staggered: bool = False,
+    dtype: type = np.float64, first: float = 0.5,
 ) -> xr.Dataset:
     """A canonical dataset of nx, ny, nz = size cells; w on z faces; u, v at centres or on their own faces (staggered).
 
