@@ -38,6 +38,7 @@ from lespost.profiles.one_pass import assemble, block_statistics
 from lespost.profiles.production import add_production, close_surface
 from lespost.profiles.settings import IntervalSettings
 from lespost.profiles.windows import average_windows
+from lespost.regime.anisotropy import anisotropy_profiles
 from lespost.regime.classify import classify
 from lespost.versions import stack_versions
 
@@ -118,7 +119,8 @@ def _products(plan: RunPlan, profiles: xr.Dataset, summary: Summary, timings: di
     depths = {window.name: _first(regime, window.name, "h") for window in plan.windows}
     findings = (*plan.opened.findings, *_findings(profiles, forcing, plan, depths))
     write_zarr(out / "profiles.zarr", profiles)
-    write_netcdf(out / "windows.nc", xr.merge([windows, _window_forcing(forcing, plan)], join="exact", combine_attrs="override"))
+    whole = [windows, anisotropy_profiles(windows), _window_forcing(forcing, plan)]
+    write_netcdf(out / "windows.nc", xr.merge(whole, join="exact", combine_attrs="override"))
     write_csv(out / "regime.csv", regime)
     views = plan_views(fields, plan.windows, depths)
     if views is not None:

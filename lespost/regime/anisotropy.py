@@ -5,6 +5,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
+import xarray as xr
 
 
 @dataclass(frozen=True)
@@ -50,3 +51,25 @@ def anisotropy(stress: np.ndarray) -> Anisotropy:
         values, np.where(known[..., None, None], vectors, np.nan), first - second, 2 * (second - third), 3 * third + 1,
         np.sqrt((first**2 + first * second + second**2) / 3), np.cbrt(-first * second * (first + second) / 2),
     )
+
+
+#: Variables of `anisotropy_profiles`: name, long_name.
+PROFILES = (
+    ("anisotropy_one_component", "one_component", "barycentric weight of one-component turbulence, C1"),
+    ("anisotropy_two_component", "two_component", "barycentric weight of two-component turbulence, C2"),
+    ("anisotropy_isotropic", "isotropic", "barycentric weight of isotropic turbulence, C3"),
+    ("anisotropy_eta", "eta", "Lumley invariant eta"),
+    ("anisotropy_xi", "xi", "Lumley invariant xi"),
+)
+
+
+def anisotropy_profiles(moments: xr.Dataset) -> xr.Dataset:
+    """Barycentric weights and Lumley invariants of the Reynolds stress in `moments`, on the dims of its uu.
+
+    Variances include the subgrid share where it is known (X_total); covariances are total ones where known.
+    """
+    parts = [moments[f"{name}_total" if f"{name}_total" in moments else name].values for name in ("uu", "vv", "ww", "uv", "uw", "vw")]
+    found = anisotropy(tensor(*parts))
+    dims = moments["uu"].dims
+    data = {name: (dims, getattr(found, part), {"units": "1", "long_name": text}) for name, part, text in PROFILES}
+    return xr.Dataset(data, coords={str(dim): moments[dim] for dim in dims if dim in moments.coords})

@@ -10,6 +10,7 @@ import pandas as pd
 import pytest
 
 from lespost.profiles.windows import Window
+from lespost.regime.anisotropy import anisotropy_profiles
 from lespost.regime.classify import COLUMNS, classify, production_regime
 from lespost.regime.settings import RegimeSettings
 from tests.unit.regime.toy_profiles import Truth, make_forcing, make_profiles
@@ -156,3 +157,14 @@ def test_ties_are_seldom_called_and_clear_cases_are() -> None:
 )
 def test_what_feeds_the_turbulence(shear: float, stokes: float, buoyancy: float, regime: str) -> None:
     assert production_regime({"shear": shear, "stokes": stokes, "buoyancy": buoyancy}) == regime
+
+
+def test_anisotropy_goes_with_the_windows() -> None:
+    """Langmuir-like variances 1 : 2 : 2 without covariances: weights 0, 0.4, 0.6 (exact)."""
+    profiles = make_profiles(Truth(scatter=0.0), np.random.default_rng(0))
+    profiles["uw"] = 0.0 * profiles["uw"]
+    found = anisotropy_profiles(profiles)
+    assert found["anisotropy_two_component"].dims == ("time", "z")
+    np.testing.assert_allclose(found["anisotropy_one_component"].values, 0.0, atol=1e-12)
+    np.testing.assert_allclose(found["anisotropy_two_component"].values, 0.4, atol=1e-12)
+    np.testing.assert_allclose(found["anisotropy_isotropic"].values, 0.6, atol=1e-12)
