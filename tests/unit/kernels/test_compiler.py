@@ -10,6 +10,8 @@ from pathlib import Path
 
 import pytest
 
+from lespost.kernels.compiler import ChecksummedFiles
+
 KERNEL = """
 from lespost.kernels.compiler import kernel, reordering_kernel
 from helper import twice
@@ -73,6 +75,19 @@ def test_damage_of_any_kind_costs_a_compilation_only(folder: Path) -> None:
         path.write_bytes(damage(path.read_bytes()))
         assert ask(folder)[:2] == (10, 0)
     assert ask(folder)[:2] == (10, 1)  # repaired by the compilation
+
+
+def test_a_single_flipped_bit_anywhere_makes_an_entry_absent(tmp_path: Path) -> None:
+    """Most of an entry is machine code, in which a flipped bit is still a readable entry: the checksum must catch it."""
+    files = ChecksummedFiles(str(tmp_path), "kernel", "stamp")
+    code = bytes(range(256)) * 4
+    files.save("signature", code)
+    assert files.load("signature") == code
+    path = next(tmp_path.glob("*.nbc"))
+    whole = path.read_bytes()
+    for place in range(0, len(whole), 97):
+        path.write_bytes(whole[:place] + bytes([whole[place] ^ 1]) + whole[place + 1 :])
+        assert files.load("signature") is None, place
 
 
 def test_a_changed_helper_is_noticed(folder: Path) -> None:
