@@ -15,6 +15,7 @@ from typing import Any, Protocol
 import numpy as np
 import xarray as xr
 
+from lespost.errors import DataError
 from lespost.fields.geometry import domain_lengths, spacing
 from lespost.instruments.doppler_profiler import DopplerProfiler
 from lespost.instruments.ensembles import record_ensembles
@@ -61,6 +62,9 @@ def sample(
     frozen pattern). windows: objects with start and end [s]; only snapshots from the first start to the last end are sampled.
     Raises DataError where the geometry or the mode of time cannot be honest (geometry.py, timing.py).
     """
+    if not np.array_equal(profiles["time"].values, fields["time"].values):
+        raise DataError(f'instrument "{settings.name}": the profiles are not those of the fields ({profiles.sizes["time"]} and '
+                        f'{fields.sizes["time"]} snapshots, or other times); compute them from the same snapshots.')
     instrument = KINDS[settings.kind](settings, fields)
     sampler = make_sampler(fields, instrument.volumes, settings.interpolation)
     lengths = domain_lengths(fields)

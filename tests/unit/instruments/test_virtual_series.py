@@ -9,6 +9,7 @@ import numpy as np
 import pytest
 import xarray as xr
 
+from lespost.errors import DataError
 from lespost.instruments.cautions import PLANNING_CAUTION
 from lespost.instruments.doppler_profiler import DopplerProfiler
 from lespost.instruments.moments import beam_stress, noise_corrected_variances
@@ -175,6 +176,11 @@ def test_the_subgrid_share_comes_from_the_files_only() -> None:
     for name in ("uu", "vv", "ww"):
         profiles[f"{name}_sgs"] = profiles[name] * 0.25
     np.testing.assert_allclose(subgrid_share(profiles, np.array([10.0, 20.0])), 0.2)
+
+
+def test_profiles_of_other_snapshots_are_refused() -> None:
+    with pytest.raises(DataError, match="not those of the fields"):
+        sample(waves(times=(0.0, 60.0)), means(waves()), settings(), [], np.random.default_rng(0))
 
 
 def test_the_series_carries_its_response() -> None:
