@@ -66,9 +66,12 @@ PROFILES = (
 def anisotropy_profiles(moments: xr.Dataset) -> xr.Dataset:
     """Barycentric weights and Lumley invariants of the Reynolds stress in `moments`, on the dims of its uu.
 
-    Variances include the subgrid share where it is known (X_total); covariances are total ones where known.
+    Resolved plus subgrid stress where all of it is known, else the resolved one: a mixture need not be a stress of any flow
+    (its weights can leave 0 to 1).
     """
-    parts = [moments[f"{name}_total" if f"{name}_total" in moments else name].values for name in ("uu", "vv", "ww", "uv", "uw", "vw")]
+    names = ("uu", "vv", "ww", "uv", "uw", "vw")
+    total = all(f"{name}_total" in moments for name in ("uu", "vv", "ww", "uw", "vw"))
+    parts = [moments[f"{name}_total" if total and f"{name}_total" in moments else name].values for name in names]
     found = anisotropy(tensor(*parts))
     dims = moments["uu"].dims
     data = {name: (dims, getattr(found, part), {"units": "1", "long_name": text}) for name, part, text in PROFILES}

@@ -89,6 +89,9 @@ def test_the_results_folder_keeps_its_contract(case: tuple[str, Path, Path]) -> 
     assert list(pd.read_csv(out / "regime.csv").columns) == COLUMNS
     with xr.open_dataset(out / "windows.nc", decode_times=False) as windows:
         assert {"uu", "uu_se", "uu_neff"} <= set(windows.data_vars)
+        weights = [windows[f"anisotropy_{part}"].values for part in ("one_component", "two_component", "isotropic")]
+    for weight in weights:
+        assert (weight > -1e-9).all() and (weight < 1 + 1e-9).all()  # realisable: a stress of some flow
     page = (out / "report.html").read_text()
     assert "http://" not in page.replace("http://www.w3.org", "")
     assert "https://" not in page
