@@ -217,6 +217,12 @@ def wrap_degrees(angle: Any) -> Any:
     return -((-np.asarray(angle, float) + 180.0) % 360.0 - 180.0)
 
 
+def mean_direction(angle: Any) -> float:
+    """Mean of directions [degree] as unit vectors: 179 and -179 are neighbours, and have no arithmetic mean."""
+    radians = np.radians(np.asarray(angle, float))
+    return float(np.degrees(np.arctan2(np.sin(radians).mean(), np.cos(radians).mean())))
+
+
 def _temperature_flux(forcing: ForcingSettings, sources: Sources, density: float, specific_heat: float) -> np.ndarray:
     if forcing.surface_temperature_flux is None and forcing.surface_heat_flux is not None:
         given = float(buoyancy.temperature_flux(forcing.surface_heat_flux, density, specific_heat))

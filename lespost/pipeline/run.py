@@ -24,7 +24,7 @@ from lespost.engine.progress import progress_for
 from lespost.engine.run import Summary, run_tasks
 from lespost.engine.tasks import Task
 from lespost.findings import Decision, Finding
-from lespost.forcing.resolve import resolve_forcing
+from lespost.forcing.resolve import mean_direction, resolve_forcing
 from lespost.pipeline.comparison import compare_with_records
 from lespost.pipeline.files import plain, write_csv, write_json, write_netcdf, write_zarr
 from lespost.pipeline.outcome import Outcome
@@ -158,9 +158,9 @@ def _findings(profiles: xr.Dataset, forcing: xr.Dataset, plan: RunPlan, depths: 
     recipe = plan.loaded.recipe
     declared = Declared(
         friction_velocity=float(forcing["friction_velocity"].mean()),
-        stress_direction=float(forcing["stress_direction"].mean()),
+        stress_direction=mean_direction(forcing["stress_direction"].values),
         surface_temperature_flux=float(forcing["surface_temperature_flux"].mean()),
-        stokes_direction=float(forcing["stokes_direction"].mean()), us0=float(forcing["us0"].mean()),
+        stokes_direction=mean_direction(forcing["stokes_direction"].values), us0=float(forcing["us0"].mean()),
         reference_density=float(forcing["reference_density"]), specific_heat=float(forcing["specific_heat"]),
         misaligned=recipe.stokes.direction is not None,
     )
@@ -192,7 +192,7 @@ def _account(
         driving = forcing.isel(time=window.members(forcing["time"].values))
         cells = len(rows) > 0 and rows["axis_kind"].iloc[0] == "cell"
         directions[window.name] = {
-            "wind": float(driving["stress_direction"].mean()), "waves": float(driving["stokes_direction"].mean()),
+            "wind": mean_direction(driving["stress_direction"].values), "waves": mean_direction(driving["stokes_direction"].values),
             "axis": float(rows["axis_deg"].iloc[0]) if cells else float("nan"),
         }
     return plain({

@@ -17,6 +17,7 @@ import xarray as xr
 
 from lespost.forcing import regimes
 from lespost.forcing.buoyancy import absorbed_in_layer
+from lespost.forcing.resolve import mean_direction
 from lespost.forcing.scales import Scales, scales
 from lespost.profiles.depths import LayerDepth, layer_depth
 from lespost.profiles.production import layer_shares
@@ -67,9 +68,8 @@ def classify(profiles: xr.Dataset, forcing: xr.Dataset, windows: Sequence[Window
 def window_state(mean: xr.Dataset, forcing: xr.Dataset, settings: RegimeSettings) -> WindowState:
     """Depth and scales of one window. mean: window means; forcing: the window's snapshots."""
     driving = forcing.mean("time", keep_attrs=True)
-    for name in ("stress_direction", "stokes_direction"):  # angles have no arithmetic mean: 179 and -179 degrees are neighbours
-        angle = np.radians(forcing[name].values)
-        driving[name] = float(np.degrees(np.arctan2(np.sin(angle).mean(), np.cos(angle).mean())))
+    for name in ("stress_direction", "stokes_direction"):
+        driving[name] = mean_direction(forcing[name].values)
     ustar = float(driving["friction_velocity"])
     given = float(forcing.attrs.get("mixed_layer_depth", np.nan))
     if np.isfinite(given):

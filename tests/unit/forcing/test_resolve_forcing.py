@@ -16,7 +16,7 @@ from pydantic import ValidationError
 from lespost.errors import DataError, RecipeError
 from lespost.findings import Hint
 from lespost.forcing.buoyancy import seawater_properties
-from lespost.forcing.resolve import resolve_forcing, wrap_degrees
+from lespost.forcing.resolve import mean_direction, resolve_forcing, wrap_degrees
 from lespost.forcing.settings import ForcingSettings, StokesSettings
 
 TIME = np.array([0.0, 600.0, 1200.0])
@@ -226,3 +226,10 @@ def test_files_of_the_shared_runs_state_their_forcing(shared: Path) -> None:
                     {"surface_speed": given_numbers["us0"], "wavenumber": given_numbers["kwave"]})
     la_t = float(np.sqrt(found["friction_velocity"] / found["us0"])[0])
     assert 0.25 < la_t < 0.35  # the Langmuir regime, about 0.3 (Li, Garrett & Skyllingstad 2005)
+
+
+def test_directions_are_averaged_round_the_circle() -> None:
+    """179 and -179 degrees: the mean is 180, not 0 (exact)."""
+    assert abs(mean_direction([179.0, -179.0])) == pytest.approx(180.0)
+    assert mean_direction([10.0, 30.0]) == pytest.approx(20.0)
+    assert np.isnan(mean_direction([np.nan, 1.0]))
