@@ -135,7 +135,7 @@ def write_record(
             ("ECUR", error, indicative, "error velocity"),
         ):
             _velocity(file, name, values, missing, standard_name=standard_name, long_name=long_name,
-                      ancillary_variables=f"{name}_QC")
+                      ancillary_variables=f"{name}_QC", cell_methods=f"time: mean (interval: {plan.ping_interval:g} s)")
             _flags(file, name, long_name, recorded.flags)
         for n in range(4):
             _velocity(file, f"BEAM_{n + 1}", recorded.beams[n], missing,
