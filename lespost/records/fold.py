@@ -195,8 +195,8 @@ def averaging_interval(record: RawRecord, found: Mapping[str, Found], interval: 
     for role in ("eastward", "northward", "upward", "x", "y"):
         if role in found:
             text = str(found[role].variable.attributes.get("cell_methods", ""))
-            if re.search(r"time:\s*mean", text):
+            if re.search(r"time:\s*mean", text, re.IGNORECASE):
                 return interval
-            if re.search(r"time:\s*point", text):
+            if re.search(r"time:\s*point", text, re.IGNORECASE):
                 return 0.0
     return float("nan")

@@ -355,3 +355,16 @@ def test_files_written_pass_the_cf_checker(tmp_path: Path) -> None:
         for m in item["msgs"]
     ]
     assert said == []
+
+
+@pytest.mark.parametrize("text", ["time: mean (interval: 1 s)", "TIME: mean", "Time: Mean"])
+def test_cell_methods_in_any_case_tell_the_averaging(text: str, tmp_path: Path) -> None:
+    """OceanSITES names its axis TIME; CF writes lower case: both mean the mean over the sampling interval."""
+    source = Path(__file__).parents[3] / "toy_fields" / "data" / "invented_mooring.nc"
+    target = tmp_path / "record.nc"
+    target.write_bytes(source.read_bytes())
+    with netCDF4.Dataset(target, "a") as data:
+        for name in ("UCUR", "VCUR", "WCUR"):
+            data[name].cell_methods = text
+    series = read_record(RecordSettings(name="m", path=str(target), x_axis_compass_bearing=90.0), tmp_path)
+    assert series.attrs["averaging_interval"] == pytest.approx(60.0, abs=1e-5)  # times are stored in days
