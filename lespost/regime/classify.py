@@ -2,7 +2,8 @@
 
 Three witnesses are heard. The component variances (orderings.py) give the answer and its probability. Production of turbulence
 in the band and the forcing (Belcher et al. 2012) are asked independently; they do not vote, but where both contradict a
-definite answer in one voice, the answer is "mixed". Variances that cannot be told apart give "undetermined".
+definite answer in one voice, the answer is "mixed"; so it is where the variances lie between convection and Langmuir turbulence, whose orderings overlap. Variances
+that cannot be told apart give "undetermined".
 """
 
 from __future__ import annotations
@@ -250,6 +251,11 @@ def _decide(probabilities: OrderingProbabilities | None, production: Mapping[str
     if probabilities is None:
         return "undetermined", _agreement("undetermined", told), []
     name, probability = probabilities.best()
+    both = probabilities.convective + probabilities.langmuir
+    if probability < settings.confidence <= both and name != "shear":
+        # Both have the vertical raised; the variances show that, and lie between the two in what tells them apart.
+        pair = f"convective ({probabilities.convective:.2f}) and langmuir ({probabilities.langmuir:.2f})"
+        return "mixed", _agreement("between convective and langmuir", told), [f"the variances lie between {pair}"]
     if probability < settings.confidence:
         why = f"no ordering of the variances is sure (best: {name}, {probability:.2f})"
         return "undetermined", _agreement("undetermined", told), [why]

@@ -12,6 +12,7 @@ import pytest
 from lespost.profiles.windows import Window
 from lespost.regime.anisotropy import anisotropy_profiles
 from lespost.regime.classify import COLUMNS, classify, production_regime
+from lespost.regime.orderings import UNEQUAL_RATIO
 from lespost.regime.settings import RegimeSettings
 from tests.unit.regime.toy_profiles import Truth, make_forcing, make_profiles
 
@@ -99,6 +100,18 @@ def test_mixed_needs_both_witnesses_against_sure_variances() -> None:
     assert "production and forcing say shear" in both["note"]
     one = upper(Truth(shear=1e-7, stokes=1e-9), us0=0.068)
     assert one["regime"] == "langmuir"
+
+
+def test_between_convection_and_langmuir_is_mixed() -> None:
+    """Vertical largest for sure, cross/along at the very limit that tells the two apart, both productions alike."""
+    truth = Truth(along=2e-4, cross=2e-4 * UNEQUAL_RATIO, vertical=5e-4, stokes=1e-7, buoyancy=1e-7, scatter=0.3, coherent=False)
+    rows = [upper(truth, seed=seed, b0=1e-7) for seed in range(12)]
+    mixed = [row for row in rows if row["regime"] == "mixed"]
+    assert len(mixed) >= 3
+    for row in mixed:
+        assert row["p_convective"] + row["p_langmuir"] >= QUICK.confidence
+        assert "between convective" in row["note"]
+    assert {row["regime"] for row in rows} <= {"mixed", "convective", "langmuir"}
 
 
 def test_unknown_waves_leave_langmuir_numbers_empty_but_not_the_answer() -> None:
