@@ -18,7 +18,7 @@ from lespost.errors import LespostError
 from lespost.versions import stack_versions
 
 #: Commands in the order a newcomer meets them.
-COMMANDS = ("inspect", "run", "scales", "waves", "record", "page")
+COMMANDS = ("inspect", "run", "scales", "waves", "record", "laws", "page")
 
 class CommandGroup(click.Group):
     """A click group whose commands are imported on first use, so that `lespost --help` stays quick."""

@@ -11,6 +11,7 @@ from dataclasses import dataclass
 from itertools import combinations
 
 import numpy as np
+from scipy.stats import norm
 from scipy.stats import t as student
 
 from lespost.constants import GRAVITY
@@ -18,7 +19,7 @@ from lespost.errors import RequestError
 from lespost.scaling.fit import Estimate, LawFit
 from lespost.scaling.laws import dimensions, unit_text
 from lespost.scaling.table import ScaleTable
-from lespost.units import parse_quantity
+from lespost.units import convertible, parse_quantity
 
 #: A hidden scale is reported where a power of metre or second is left over by more than this.
 BALANCED = 0.02
@@ -88,9 +89,10 @@ def missing_scale(fit: LawFit, table: ScaleTable, level: float, known: tuple[Kno
         centre = (fit.intercept.value + (fit.slope.value - n) * middle) / power
         logs = (fit.intercepts + (fit.slopes - n) * middle) / power
     low, high = (float(q) for q in np.quantile(logs, (0.5 - level / 2, 0.5 + level / 2)))
-    widen = float(student.ppf(0.5 + level / 2, max(fit.neff - 2, 1)) / 1.959964) if level == 0.95 else 1.0
+    # the bootstrap knows nothing of how few the independent rows are; Student's t does
+    widen = float(student.ppf(0.5 + level / 2, max(fit.neff - 2, 1)) / norm.ppf(0.5 + level / 2))
     low, high = centre + (low - centre) * widen, centre + (high - centre) * widen
-    value = Estimate(float(np.exp(centre)), float(np.exp(centre) * (high - low) / 4), float(np.exp(low)), float(np.exp(high)))
+    value = Estimate(float(np.exp(centre)), float(np.exp(centre) * np.std(logs)), float(np.exp(low)), float(np.exp(high)))
     balanced_low, balanced_high = (_left(fit, s) for s in (fit.slope.low, fit.slope.high))
     ambiguous = exponent is None and not fit.fixed and all(
         min(a, b) <= 0 <= max(a, b) for a, b in zip(balanced_low, balanced_high, strict=True))
@@ -133,15 +135,9 @@ def known_from_text(text: str) -> Known:
         for second in range(-4, 5):
             unit = unit_text(metre, second)
             words = quantity.split(None, 1)
-            if len(words) == 2 and _converts(words[1], unit):
+            if len(words) == 2 and convertible(words[1], unit):
                 return Known(name.strip(), parse_quantity(quantity.strip(), unit, f'scale "{text}"'), (float(metre), float(second)))
     raise RequestError(f'scale "{text}": write it as "name = 0.3 m s-1", with a unit made of metres and seconds.')
-
-
-def _converts(text: str, unit: str) -> bool:
-    from lespost.units import convertible
-
-    return convertible(text, unit)
 
 
 def candidates(unit: tuple[float, float], required: Estimate, units: str, known: tuple[Known, ...]) -> list[Candidate]:

@@ -14,7 +14,6 @@ from scipy.stats import norm
 
 from lespost.scaling.fit import LawFit, draw_rows
 from lespost.scaling.table import ScaleTable
-from lespost.statistics.samples import effective_samples
 
 #: Condition number of the standardised log predictors above which a regression on all of them is ill posed (Belsley, Kuh &
 #: Welsch 1980, from memory).
@@ -93,8 +92,8 @@ def discriminate(fits: Sequence[LawFit], table: ScaleTable, count: int, level: f
     """How `fits` (to the same rows) compare. Raises nothing for one law: its standing is then alone."""
     residuals = np.stack([fit.residual for fit in fits])
     free = np.array([1 if fit.fixed else 2 for fit in fits]) + 1
-    ordered = table.time is not None
-    neff = min(fit.neff for fit in fits)
+    # the scatter about the best line is the natural one; about a wrong line the misfit itself drifts with the forcing
+    neff = min(fits, key=lambda fit: float((fit.residual**2).mean())).neff
     likelihood = -0.5 * neff * (np.log(2 * np.pi * (residuals**2).mean(1)) + 1)
     aic, bic = 2 * free - 2 * likelihood, np.log(neff) * free - 2 * likelihood
     weight = np.exp(-0.5 * (aic - aic.min()))
@@ -103,9 +102,10 @@ def discriminate(fits: Sequence[LawFit], table: ScaleTable, count: int, level: f
         Standing(fit.law.name, int(free[i]), float(np.std(fit.residual)), float(likelihood[i]), float(aic[i] - aic.min()),
                  float(bic[i] - bic.min()), float(weight[i] / weight.sum()), float(chosen[i])) for i, fit in enumerate(fits)
     ]
-    pairs = tuple(_vuong(fits[i], fits[j], ordered, level) for i in range(len(fits)) for j in range(i + 1, len(fits)))
+    pairs = tuple(_vuong(fits[i], fits[j], level) for i in range(len(fits)) for j in range(i + 1, len(fits)))
     best = fits[int(np.argmin(aic))].law.name
-    rivals = {pair.second if pair.first == best else pair.first for pair in pairs if best in (pair.first, pair.second) and not pair.separated}
+    rivals = {pair.second if pair.first == best else pair.first for pair in pairs
+              if best in (pair.first, pair.second) and not pair.separated}
     order = sorted(standings, key=lambda item: item.aic)
     names = tuple(dict.fromkeys(name for fit in fits for name in fit.law.needs))
     return Discrimination(collinearity(table, names), tuple(order), pairs, neff,
@@ -120,13 +120,15 @@ def _selection(residuals: np.ndarray, free: np.ndarray, neff: float, block: floa
     return np.bincount(np.argmin(criterion, axis=0), minlength=len(residuals)) / count
 
 
-def _vuong(first: LawFit, second: LawFit, ordered: bool, level: float) -> Pair:
-    """Difference of pointwise log likelihoods (normal, own variance), corrected for parameters as AIC does."""
+def _vuong(first: LawFit, second: LawFit, level: float) -> Pair:
+    """Difference of pointwise log likelihoods (normal, own variance), corrected for parameters as AIC does.
+
+    The forcing is observed, so only the scatter about the better line is random: its effective number of rows counts.
+    """
     parts = [-0.5 * (np.log(s := float((fit.residual**2).mean())) + fit.residual**2 / s) for fit in (first, second)]
     difference = parts[0] - parts[1]
     spread = float(difference.std())
-    neff = float(effective_samples(difference[:, None])[0]) if ordered else float(difference.size)
-    neff = min(neff, max(first.neff, second.neff))
+    neff = min(first, second, key=lambda fit: float((fit.residual**2).mean())).neff
     scale = np.sqrt((first.residual**2).mean()) + 1e-300
     same = bool(np.sqrt(((first.residual - second.residual) ** 2).mean()) < 1e-3 * scale)
     if same or not spread > 0:

@@ -100,7 +100,7 @@ def draw_rows(rows: int, block: float, count: int, rng: np.random.Generator) -> 
         return rng.integers(0, rows, (count, rows))
     from arch.bootstrap import StationaryBootstrap
 
-    draws = StationaryBootstrap(block, np.arange(rows), seed=rng)
+    draws = StationaryBootstrap(block, np.arange(rows), seed=rng)  # type: ignore[arg-type]  # fractions are fine
     return np.stack([np.asarray(position[0]) for position, _ in draws.bootstrap(count)])
 
 
@@ -110,14 +110,16 @@ def widened(axes: Axes, scatter: float) -> tuple[np.ndarray, np.ndarray]:
     return wide, axes.correlation * axes.y_se / wide
 
 
-def fit_law(law: Law, table: ScaleTable, count: int, level: float, rng: np.random.Generator, fixed: bool = False) -> LawFit:
+def fit_law(law: Law, table: ScaleTable, count: int, level: float, rng: np.random.Generator, fixed: bool = False,
+            scaled_by: Powers | None = None) -> LawFit:
     """`law` fitted to the rows of `table` (all positive) with errors in both variables and `count` bootstrap replicates.
 
-    fixed: hold the exponent at 1 (not for laws whose exponent is always fitted). Intervals of `level` are estimate ± t s.e.
-    with the effective number of rows; the s.e. is the larger of bootstrap and York's with the natural scatter in it.
+    fixed: hold the exponent at 1 (not for laws whose exponent is always fitted). scaled_by: divide both axes by this product.
+    Intervals of `level` are estimate ± t s.e. with the effective number of rows; the s.e. is the larger of the bootstrap's and
+    York's with the natural scatter in it.
     """
     slope = 1.0 if fixed and not law.free else None
-    axes = law_axes(law, table)
+    axes = law_axes(law, table, scaled_by)
     scatter = natural_scatter(axes.x, axes.y, axes.x_se, axes.y_se, axes.correlation, slope)
     y_se, correlation = widened(axes, scatter)
     line = york(axes.x, axes.y, axes.x_se, y_se, correlation, slope)

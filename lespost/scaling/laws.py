@@ -99,7 +99,8 @@ def log_product(powers: Powers, table: ScaleTable) -> np.ndarray:
 
 def product_text(powers: Powers) -> str:
     """A product in words, "us0^0.5 ustar^0.5"."""
-    return " ".join(name if abs(power - 1) < 1e-12 else f"{name}^{power:.4g}" for name, power in powers.items() if abs(power) > 1e-12) or "1"
+    parts = (name if abs(power - 1) < 1e-12 else f"{name}^{power:.4g}" for name, power in powers.items() if abs(power) > 1e-12)
+    return " ".join(parts) or "1"
 
 
 def combine(*parts: tuple[Powers, float]) -> dict[str, float]:

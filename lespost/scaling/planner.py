@@ -1,8 +1,8 @@
 """How long a record must be to tell two laws apart, given how the forcing varies.
 
 If law A holds with natural scatter σ and independent scatter from row to row of duration 2τ, Vuong's z of A against B grows as
-n^(1/2) D^(1/2)/(2σ), D the variance of ln P_A that B cannot imitate (derived here for D well below σ²; for larger D the spread of
-the difference is widened by its own square). The power asked for then sets n, and n 2τ the hours.
+n^(1/2) D^(1/2)/(2σ) for small D, the variance of ln P_A that B cannot imitate (`rows_needed` holds for any D). The power asked for
+then sets n, and n 2τ the hours.
 """
 
 from __future__ import annotations
@@ -13,7 +13,7 @@ import numpy as np
 from scipy.stats import norm
 
 from lespost.scaling.fit import LawFit
-from lespost.scaling.laws import Law, Powers, combine
+from lespost.scaling.laws import Law, Powers, combine, log_product
 from lespost.scaling.table import ScaleTable
 
 
@@ -42,9 +42,8 @@ class Plan:
 
 def distinct_part(first: Law, second: Law, table: ScaleTable, free: bool) -> np.ndarray:
     """The part of ln P of `first` (row,) that the second law cannot imitate: its constant is free, and its exponent if `free`."""
-    a = first.log_predictor(table) + _base(first, table)
     b = second.log_predictor(table)
-    rest = a - _base(second, table)
+    rest = first.log_predictor(table) + log_product(first.base, table) - log_product(second.base, table)
     if not (free or second.free):
         rest = rest - b
         return np.asarray(rest - rest.mean())
@@ -54,17 +53,11 @@ def distinct_part(first: Law, second: Law, table: ScaleTable, free: bool) -> np.
     return np.asarray(rest - b * (b * rest).sum() / total) if total > 0 else rest
 
 
-def _base(law: Law, table: ScaleTable) -> np.ndarray:
-    from lespost.scaling.laws import log_product
-
-    return log_product(law.base, table)
-
-
 def rows_needed(distinct_variance: float, scatter: float, power: float, level: float) -> float:
     """Independent rows for Vuong's test to prefer the true law at `level` (two-sided) with probability `power`; infinite if D = 0.
 
-    With σ² = scatter², the mean difference of log likelihoods is ½ ln(1 + D/σ²) and its variance
-    D σ²/(σ² + D)² + (D/(σ² + D))²/2, for normal scatter and normal distinct part, each law with its own variance (derived here).
+    The mean difference of log likelihoods is ½ ln(1 + D/σ²) and its variance D/(σ² + D), for normal scatter σ and normal distinct
+    part, each law with its own variance (derived here).
     """
     share = distinct_variance / (scatter**2 + distinct_variance)
     if not share > 1e-12:

@@ -17,6 +17,7 @@ from lespost.scaling.laws import Powers
 from lespost.scaling.table import ScaleTable
 
 Null = Literal["velocity", "all"]
+_NULLS: tuple[Null, Null] = ("velocity", "all")
 
 
 @dataclass(frozen=True)
@@ -32,13 +33,15 @@ class ByChance:
 class Guard:
     """An observed correlation and slope beside their by-chance twins.
 
-    low, high: the middle `level` of the permutations. p_value: share of permutations at least as far from the twin on the side of
-    the data (with the +1 of Davison & Hinkley 1997). beats_chance: p_value below 1 - level.
+    chance: the velocity independent of the forcing, which keeps its own correlations; independent: every column independent of the
+    others (Kenney 1982). low, high: the middle `level` of the permutations. p_value: for two sides, twice the share of permutations at
+    least as far out on the side of the data (with the +1 of Davison & Hinkley 1997). beats_chance: p_value below 1 - level.
     """
 
     correlation: float
     slope: float
     chance: ByChance
+    independent: ByChance
     correlation_low: float
     correlation_high: float
     slope_low: float
@@ -86,7 +89,8 @@ def guard(x: np.ndarray, y: np.ndarray, x_powers: Powers, y_powers: Powers, tabl
     block: mean number of rows that are moved together, so that serial correlation stays in the permuted velocities.
     """
     names = tuple(dict.fromkeys(["velocity", *x_powers, *y_powers]))
-    chance = by_chance(y_powers, x_powers, names, log_covariance(table, names))
+    covariance = log_covariance(table, names)
+    chance, independent = (by_chance(y_powers, x_powers, names, covariance, null) for null in _NULLS)
     velocity = np.log(table.columns["velocity"])
     shuffled = velocity[permuted_blocks(velocity.size, block, count, rng)]
     difference = shuffled - velocity
@@ -100,7 +104,7 @@ def guard(x: np.ndarray, y: np.ndarray, x_powers: Powers, y_powers: Powers, tabl
     low, high = np.quantile(null_r, (tail, 1 - tail))
     slope_low, slope_high = np.quantile(null_slope, (tail, 1 - tail))
     shared = tuple(name for name in x_powers if name in y_powers)
-    return Guard(float(r), float(slope), chance, float(low), float(high), float(slope_low), float(slope_high), p_value,
+    return Guard(float(r), float(slope), chance, independent, float(low), float(high), float(slope_low), float(slope_high), p_value,
                  p_value < 1 - level, shared, null_r, null_slope)
 
 
