@@ -111,13 +111,14 @@ def report(shape: tuple[int, int, int], times: int, found: dict[str, float]) -> 
 
 
 def test_the_pass_costs_little_more_than_decoding(tmp_path: Path) -> None:
-    found = measure((128, 256, 256), 2, tmp_path)
-    print("\n" + report((128, 256, 256), 2, found))
+    # Eight snapshots: in a run of two, the first read and the last sums overlap with nothing and weigh a quarter of it.
+    found = measure((128, 256, 256), 8, tmp_path)
+    print("\n" + report((128, 256, 256), 8, found))
     assert found["ratio"] <= LIMIT
 
 
 if __name__ == "__main__":
-    nx, ny, nz, times = (int(word) for word in sys.argv[1:5]) if len(sys.argv) > 4 else (256, 256, 128, 2)
+    nx, ny, nz, times = (int(word) for word in sys.argv[1:5]) if len(sys.argv) > 4 else (256, 256, 128, 8)
     with tempfile.TemporaryDirectory() as name:
         print(report((nz, ny, nx), times, measure((nz, ny, nx), times, Path(name))))
 
