@@ -12,7 +12,7 @@ from scipy.stats import t as student
 from lespost.report import style
 from lespost.scaling.analyse import Analysis, Tested
 from lespost.scaling.fit import Axes, LawFit
-from lespost.scaling.laws import dimensions, unit_text
+from lespost.scaling.laws import Powers, dimensions, unit_text
 from lespost.scaling.self_correlation import Guard, permuted_blocks
 
 _SYMBOLS = {"velocity": "V", "ustar": "u_*", "us0": "u_{s0}", "us_sl": "u_{sSL}", "h": "h", "b0": "B_0", "buoyancy_frequency": "N",
@@ -133,10 +133,11 @@ def _few_ticks(axis: plt.Axes, x: bool) -> None:
 
     low, high = axis.get_xlim() if x else axis.get_ylim()
     decades = np.log10(high / low)
-    choices = ((3.0, (1.0,)), (1.3, (1.0, 3.0)), (0.5, (1.0, 2.0, 5.0)), (0.0, (1.0, 1.5, 2.0, 3.0, 4.0, 6.0, 8.0)))
+    choices = ((3.0, (1.0,)), (1.3, (1.0, 3.0)), (0.5, (1.0, 2.0, 5.0)), (0.22, (1.0, 1.5, 2.0, 3.0, 4.0, 6.0, 8.0)),
+               (0.0, tuple(np.arange(1.0, 10.0, 0.2))))
     subs = next(numbers for least, numbers in choices if decades >= least)
     which = axis.xaxis if x else axis.yaxis
-    which.set_major_locator(LogLocator(subs=subs, numticks=8))
+    which.set_major_locator(LogLocator(subs=subs, numticks=40))
     which.set_major_formatter(FuncFormatter(lambda value, _: f"{value:.3g}"))
     which.set_minor_locator(NullLocator())
     which.set_minor_formatter(NullFormatter())
@@ -146,16 +147,19 @@ def _alpha(count: int) -> float:
     return float(np.clip(40.0 / count, 0.15, 0.9))
 
 
-def _label(powers: object) -> str:
-    assert isinstance(powers, dict)
-    parts = []
-    for name, power in powers.items():
-        symbol = _SYMBOLS[name]
-        if abs(power - 1) > 1e-9:
-            wrapped = f"({symbol})" if "_" in symbol else symbol
-            symbol = f"{wrapped}^{{{_fraction(power)}}}"
-        parts.append(symbol)
-    return f"${' '.join(parts) or '1'}$ [{unit_text(*dimensions(powers))}]"
+def _label(powers: Powers) -> str:
+    above, below = ([_factor(name, abs(power)) for name, power in powers.items() if sign * power > 0] for sign in (1, -1))
+    text = " ".join(above) or "1"
+    if below:
+        text += " / " + (below[0] if len(below) == 1 else f"({' '.join(below)})")
+    return f"${text}$ [{unit_text(*dimensions(powers))}]"
+
+
+def _factor(name: str, power: float) -> str:
+    symbol = _SYMBOLS[name]
+    if abs(power - 1) < 1e-9:
+        return symbol
+    return f"{{{symbol}}}^{{{_fraction(power)}}}" if "_" not in symbol else f"({symbol})^{{{_fraction(power)}}}"
 
 
 def _fraction(power: float) -> str:

@@ -116,7 +116,7 @@ def fit_law(law: Law, table: ScaleTable, count: int, level: float, rng: np.rando
 
     fixed: hold the exponent at 1 (not for laws whose exponent is always fitted). scaled_by: divide both axes by this product.
     Intervals of `level` are estimate ± t s.e. with the effective number of rows; the s.e. is the larger of the bootstrap's and
-    York's with the natural scatter in it.
+    York's, with the natural scatter in it and widened for serial correlation.
     """
     slope = 1.0 if fixed and not law.free else None
     axes = law_axes(law, table, scaled_by)
@@ -132,8 +132,10 @@ def fit_law(law: Law, table: ScaleTable, count: int, level: float, rng: np.rando
     freedom = max(neff - (1 if slope is not None else 2), 1.0)
     small = np.sqrt(len(table) / max(len(table) - 2, 1))
     quantile = float(student.ppf(0.5 + level / 2, freedom))
-    slope_se = 0.0 if slope is not None else max(_spread(many.slope) * small, float(line.slope_se))
-    intercept_se = max(_spread(many.intercept) * small, float(line.intercept_se))
+    # blocks of a short series reproduce only part of its correlation; the integral scale of the score counts the rest
+    repeats = _repeats(residual * (axes.x - axes.x.mean()), ordered), _repeats(residual, ordered)
+    slope_se = 0.0 if slope is not None else max(_spread(many.slope) * small, float(line.slope_se) * repeats[0])
+    intercept_se = max(_spread(many.intercept) * small, float(line.intercept_se) * (repeats[0] if slope is None else repeats[1]))
 
     def estimate(value: float, error: float) -> Estimate:
         return Estimate(value, error, value - quantile * error, value + quantile * error)
@@ -150,6 +152,11 @@ def _replicates(axes: Axes, y_se: np.ndarray, correlation: np.ndarray, rows: np.
     varied = np.ptp(axes.x[rows], axis=1) > 1e-9
     rows = rows[varied | (slope is not None)]
     return york(axes.x[rows], axes.y[rows], axes.x_se[rows], y_se[rows], correlation[rows], slope)
+
+
+def _repeats(series: np.ndarray, ordered: bool) -> float:
+    """By how much serial correlation of `series` widens the standard error of its mean."""
+    return float(np.sqrt(series.size / effective_samples(series[:, None])[0])) if ordered else 1.0
 
 
 def _spread(replicates: np.ndarray) -> float:
