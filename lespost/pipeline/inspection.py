@@ -7,6 +7,7 @@ forcing, with a comment that says where each number was read.
 from __future__ import annotations
 
 import os
+import shlex
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
@@ -75,7 +76,7 @@ class Inspection:
         lines.append("")
         if written is not None:
             lines.append(f"recipe written to {written}" + ("; fill in what is missing, then" if report.missing else ";")
-                         + f" run it: lespost run {written}")
+                         + f" run it: lespost run {shlex.quote(str(written))}")
         else:
             lines += ["proposed recipe (save it with --write NAME.toml)", "", *(f"    {line}" for line in self.recipe.splitlines())]
         return "\n".join(lines)
