@@ -78,9 +78,10 @@ def parse_unit(text: str, where: str = "unit") -> cf_units.Unit:
 def convertible(text: str, to: str) -> bool:
     """Whether `text` is a unit that converts to `to`."""
     try:
-        return bool(parse_unit(text).is_convertible(parse_unit(to)))
+        conversion(text, to)
     except UnitError:
         return False
+    return True
 
 
 def conversion(text: str, to: str, where: str = "unit") -> tuple[float, float]:
@@ -94,6 +95,9 @@ def conversion(text: str, to: str, where: str = "unit") -> tuple[float, float]:
             f'{where}: unit "{text}" does not convert to "{to}"; correct the unit or name it in the recipe.'
         )
     zero, one = (float(source.convert(x, target)) for x in (0.0, 1.0))
+    if not (abs(zero) < float("inf") and abs(one) < float("inf")):
+        # UDUNITS also converts between a unit and its reciprocal (m s-1 and s m-1), which no file means
+        raise UnitError(f'{where}: unit "{text}" is the reciprocal of "{to}"; correct the unit or name it in the recipe.')
     return one - zero, zero
 
 

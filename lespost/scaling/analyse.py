@@ -135,6 +135,7 @@ def _plans(result: Discrimination, fits: list[LawFit], table: ScaleTable, settin
     best = by_name[result.standings[0].name]
     scatter, duration = scatter_of(best, table)
     return tuple(
-        plan(best.law, by_name[name].law, table, scatter, duration, settings.power, settings.confidence, free, best.neff)
+        plan(best.law, by_name[name].law, table, scatter, duration, settings.power, settings.confidence, free, best.neff,
+             best.slope.value)
         for name in result.inseparable if name != best.law.name
     )

@@ -89,7 +89,11 @@ def collinearity(table: ScaleTable, names: Sequence[str]) -> Collinearity:
 
 
 def discriminate(fits: Sequence[LawFit], table: ScaleTable, count: int, level: float, rng: np.random.Generator) -> Discrimination:
-    """How `fits` (to the same rows) compare. Raises nothing for one law: its standing is then alone."""
+    """How `fits` (to the same rows) compare; one law stands alone.
+
+    The misfit of a law holds the errors of its predictor: of two equally true laws, the one whose predictor is measured better fits
+    better. Only the scatter of the rows tells laws apart here, not what is known of those errors.
+    """
     residuals = np.stack([fit.residual for fit in fits])
     free = np.array([1 if fit.fixed else 2 for fit in fits]) + 1
     # the scatter about the best line is the natural one; about a wrong line the misfit itself drifts with the forcing

@@ -155,8 +155,13 @@ def _replicates(axes: Axes, y_se: np.ndarray, correlation: np.ndarray, rows: np.
 
 
 def _repeats(series: np.ndarray, ordered: bool) -> float:
-    """By how much serial correlation of `series` widens the standard error of its mean."""
-    return float(np.sqrt(series.size / effective_samples(series[:, None])[0])) if ordered else 1.0
+    """By how much serial correlation of `series` widens the standard error of its mean; 1 where its lag-one value is within noise."""
+    departure = series - series.mean()
+    total = float((departure**2).sum())
+    lag_one = float((departure[1:] * departure[:-1]).sum()) / total if total > 0 else 0.0
+    if not ordered or lag_one < 1.645 / np.sqrt(series.size):
+        return 1.0
+    return float(np.sqrt(series.size / effective_samples(series[:, None])[0]))
 
 
 def _spread(replicates: np.ndarray) -> float:

@@ -178,8 +178,9 @@ def require_positive(table: ScaleTable, names: tuple[str, ...], allow_dropping: 
         if bad.any():
             row = int(np.argmax(bad)) + 1
             if not allow_dropping:
-                raise DataError(f"column {name}: {int(bad.sum())} values are zero or negative (first: row {row} in order of time, "
-                                f"{values[row - 1]:g}); a law of powers needs logarithms. Remove the rows, or use --drop-nonpositive.")
+                order = " in order of time" if table.time is not None else ""
+                raise DataError(f"column {name}: {int(bad.sum())} values are zero or negative (first: row {row}{order}, {values[row - 1]:g}); "
+                                "a law of powers needs logarithms. Remove the rows, or use --drop-nonpositive.")
             remarks.append(f"{int(bad.sum())} rows left out: {name} is zero or negative")
         lost = ~np.isfinite(values)
         if lost.any():

@@ -40,10 +40,10 @@ class Plan:
     ratio_high: float
 
 
-def distinct_part(first: Law, second: Law, table: ScaleTable, free: bool) -> np.ndarray:
-    """The part of ln P of `first` (row,) that the second law cannot imitate: its constant is free, and its exponent if `free`."""
+def distinct_part(first: Law, second: Law, table: ScaleTable, free: bool, exponent: float = 1.0) -> np.ndarray:
+    """The part of ln(B P^exponent) of `first` (row,) that the second law cannot imitate: its constant is free, its exponent if `free`."""
     b = second.log_predictor(table)
-    rest = first.log_predictor(table) + log_product(first.base, table) - log_product(second.base, table)
+    rest = exponent * first.log_predictor(table) + log_product(first.base, table) - log_product(second.base, table)
     if not (free or second.free):
         rest = rest - b
         return np.asarray(rest - rest.mean())
@@ -68,17 +68,18 @@ def rows_needed(distinct_variance: float, scatter: float, power: float, level: f
 
 
 def plan(first: Law, second: Law, table: ScaleTable, scatter: float, scatter_time: float, power: float = 0.8, level: float = 0.95,
-         free: bool = False, rows_now: float | None = None) -> Plan:
+         free: bool = False, rows_now: float | None = None, exponent: float = 1.0) -> Plan:
     """The rows, hours and range of forcing that separate `first` (taken as true) from `second`.
 
     table: forcing statistics (its velocity is not used). scatter: σ of ln V about the true law. scatter_time: integral time of that
-    scatter [s]; one independent row takes twice that, or the interval of the rows if longer.
+    scatter [s]; one independent row takes twice that, or the interval of the rows if longer. exponent: that of the first law, where
+    it was fitted.
     """
-    part = distinct_part(first, second, table, free)
+    part = distinct_part(first, second, table, free, exponent)
     rows = rows_needed(float(part.var()), scatter, power, level)
     duration = np.fmax(2 * scatter_time, table.interval)
     now = float(rows_now) if rows_now is not None else float(len(table))
-    name, low, high = _range(first, second, table, scatter, power, level, free, now)
+    name, low, high = _range(first, second, table, scatter, power, level, free or first.free, now)
     return Plan(first.name, second.name, power, scatter, float(part.std()), rows, rows * duration / 3600, now, name, low, high)
 
 

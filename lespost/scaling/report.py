@@ -150,7 +150,7 @@ def statement(analysis: Analysis) -> list[str]:
                    f"The predictors {', '.join(condition.names)} are correlated up to {strongest:.2f} (condition number "
                    f"{condition.condition:.1f}).")
     out += [_hidden(item.law.name, item.missing_round or item.missing) for item in analysis.tested
-            if item.missing is not None and not item.missing.ambiguous]
+            if item.missing is not None and not item.missing.ambiguous and item.law.name in analysis.free.inseparable]
     return out
 
 

@@ -33,8 +33,8 @@ def scattered(rng: np.random.Generator, rows: int = 60, us0: float = 0.0, ustar:
     return ScaleTable(columns, errors, np.arange(rows) * STEP)
 
 
-def storm(rng: np.random.Generator, rows: int = 40, hidden: float = 0.003, waves: float = 0.0012, scatter: float = 0.12,
-          wave_scatter: float = 0.08) -> ScaleTable:
+def storm(rng: np.random.Generator, rows: int = 40, hidden: float = 0.003, waves: float = 0.0012, scatter: float = 0.18,
+          wave_scatter: float = 0.05) -> ScaleTable:
     """A storm of steadily rising wind in which V = u*²/`hidden` and u_s0 = u*²/`waves`: one hidden velocity behind each."""
     wind = 0.004 * np.exp(np.linspace(0.0, 1.2, rows) + 0.03 * rng.standard_normal(rows))
     drift = wind**2 / waves * np.exp(wave_scatter * rng.standard_normal(rows))

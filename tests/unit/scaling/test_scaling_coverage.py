@@ -4,13 +4,13 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-from tests.unit.scaling.storms import scattered, storm
 
 from lespost.scaling.dimensions import missing_scale
 from lespost.scaling.fit import fit_law, law_axes
 from lespost.scaling.laws import BUILT_IN, Law
 from lespost.scaling.self_correlation import Guard, guard
 from lespost.scaling.table import ScaleTable
+from tests.unit.scaling.storms import scattered, storm
 
 TABLES = 300
 

@@ -44,6 +44,7 @@ HEADER = "time (h),velocity (m s-1),ustar (m s-1),us0 (m s-1)\n"
     ("time (h),velocity,ustar (m s-1)\n0,1,1\n1,2,2\n2,3,3\n", UnitError, '"velocity" has no unit'),
     ("time,velocity (m s-1)\n0,1\n1,2\n2,3\n", UnitError, "without a unit"),
     ("velocity (kg),ustar (m s-1)\n1,1\n2,2\n3,3\n", UnitError, "does not convert"),
+    ("velocity (s m-1),ustar (m s-1)\n1,1\n2,2\n3,3\n", UnitError, "reciprocal"),
     (HEADER + "0,0.03,0.006,0.06\n0,0.04,0.007,0.07\n2,0.05,0.008,0.08\n", DataError, "rows 1 and 2 have the same time"),
     (HEADER + "0,0.03,0.006\n1,0.04,0.007,0.07\n2,0.05,0.008,0.08\n", DataError, "has 3 cells"),
     (HEADER + "0,0.03,0.006,0.06\n1,x,0.007,0.07\n2,0.05,0.008,0.08\n", DataError, '"x" is not a number'),
