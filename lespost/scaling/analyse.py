@@ -89,6 +89,8 @@ def analyse(table: ScaleTable, settings: ScalingSettings, rng: np.random.Generat
     by: Powers = {} if settings.scaled_by == "none" or settings.scaled_by not in table.columns else {settings.scaled_by: 1.0}
     names = tuple(dict.fromkeys([*(name for law in laws for name in law.needs), *by]))
     table = require_positive(table, names, settings.drop_nonpositive)
+    if not np.ptp(np.log(table.columns["velocity"])) > 1e-9:
+        raise DataError(f"the {table.velocity_name} is the same in all rows: there is nothing for a law to explain.")
     flat = [law for law in laws if not np.ptp(law.log_predictor(table)) > 1e-9]
     for law in flat:
         remarks.append(f'law "{law.name}" left out: its predictor is the same in all rows')
@@ -97,6 +99,10 @@ def analyse(table: ScaleTable, settings: ScalingSettings, rng: np.random.Generat
         raise DataError("the forcing is the same in all rows: no law can be tested; a range of forcing is needed.")
     known = tuple(known_from_text(text) for text in settings.scales)
     tested = tuple(_test(law, table, by, known, settings, rng) for law in laws)
+    exact = [item.law.name for item in tested if float(np.std(item.free.residual)) < 1e-7]
+    if exact:
+        raise DataError(f"law {exact[0]} gives the {table.velocity_name} without any scatter: the velocity was computed from its own "
+                        "predictors, so the table cannot test a law.")
     held = [item.fixed or item.free for item in tested]
     free = [item.free for item in tested if item.law.curve is None]
     by_stated = discriminate(held, table, settings.bootstrap_samples, settings.confidence, rng)

@@ -168,7 +168,8 @@ def usable(law: Law, table: ScaleTable) -> str:
 def require_positive(table: ScaleTable, names: tuple[str, ...], allow_dropping: bool) -> ScaleTable:
     """The rows in which velocity and `names` are known; zeros and negatives have no logarithm.
 
-    allow_dropping: leave such rows out and say so, instead of raising DataError. Missing cells are always left out and said.
+    allow_dropping: leave such rows out and say so, instead of raising DataError. Missing cells are always left out and said; missing
+    errors take the median relative error of their column.
     """
     keep = np.ones(len(table), bool)
     remarks = list(table.left_out)
@@ -179,8 +180,8 @@ def require_positive(table: ScaleTable, names: tuple[str, ...], allow_dropping: 
             row = int(np.argmax(bad)) + 1
             if not allow_dropping:
                 order = " in order of time" if table.time is not None else ""
-                raise DataError(f"column {name}: {int(bad.sum())} values are zero or negative (first: row {row}{order}, {values[row - 1]:g}); "
-                                "a law of powers needs logarithms. Remove the rows, or use --drop-nonpositive.")
+                raise DataError(f"column {name}: {int(bad.sum())} values are zero or negative (first: row {row}{order}, "
+                                f"{values[row - 1]:g}); a law of powers needs logarithms. Remove the rows, or use --drop-nonpositive.")
             remarks.append(f"{int(bad.sum())} rows left out: {name} is zero or negative")
         lost = ~np.isfinite(values)
         if lost.any():
@@ -189,7 +190,16 @@ def require_positive(table: ScaleTable, names: tuple[str, ...], allow_dropping: 
     out = table.rows(keep)
     if keep.sum() < 3:
         raise DataError(f"only {int(keep.sum())} rows have all of velocity, {', '.join(names)}; at least 3 are needed.")
-    return ScaleTable(out.columns, out.errors, out.time, out.velocity_name, tuple(dict.fromkeys(remarks)))
+    errors = {}
+    for name, values in out.errors.items():
+        known = np.isfinite(values)
+        if name in ("velocity", *names) and known.any() and not known.all():
+            # an unknown error is not a zero error, which would give the row the most weight of all
+            usual = float(np.median(values[known] / out.columns[name][known]))
+            values = np.where(known, values, usual * out.columns[name])
+            remarks.append(f"{int((~known).sum())} rows have no error of {name}: the usual one, {100 * usual:.1f} %, is taken")
+        errors[name] = values
+    return ScaleTable(out.columns, errors, out.time, out.velocity_name, tuple(dict.fromkeys(remarks)))
 
 
 def _van_roekel(columns: Mapping[str, np.ndarray]) -> np.ndarray:

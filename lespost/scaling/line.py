@@ -93,7 +93,7 @@ def natural_scatter(x: np.ndarray, y: np.ndarray, x_se: Any, y_se: Any, correlat
     def excess(scatter: float) -> float:
         wide = np.sqrt(y_se**2 + scatter**2 + floor**2)
         share = np.divide(correlation * y_se, wide)  # the covariance of errors stays what it was
-        return float(np.log(york(x, y, x_se, wide, share, slope).chi_squared / freedom))
+        return float(np.log(max(float(york(x, y, x_se, wide, share, slope).chi_squared), 1e-300) / freedom))
 
     top = float(np.std(y - (slope or 0.0) * x)) * 3 + 1e-6
     try:

@@ -88,3 +88,29 @@ def test_forcing_that_never_changes_is_refused(tmp_path: Path) -> None:
     table = read_table(write(tmp_path, HEADER + "".join(f"{i},{0.03 + i / 1000},0.006,0.06\n" for i in range(6))))
     with pytest.raises(DataError, match="the same in all rows"):
         analyse(table, ScalingSettings())
+
+
+def test_velocities_that_cannot_test_a_law(tmp_path: Path) -> None:
+    quick = ScalingSettings(bootstrap_samples=100, permutations=100)
+    table = read_table(write(tmp_path, HEADER + "".join(f"{i},0.03,{0.006 + i / 1000},{0.06 + i / 100}\n" for i in range(6))))
+    with pytest.raises(DataError, match="nothing for a law to explain"):
+        analyse(table, quick)
+    table = read_table(write(tmp_path, HEADER + "".join(f"{i},{0.6 + i / 10},{0.006 + i % 3 / 1000},{0.06 + i / 100}\n" for i in range(6))))
+    with pytest.raises(DataError, match="without any scatter"):
+        analyse(table, quick)
+
+
+def test_missing_errors_take_the_usual_one(tmp_path: Path) -> None:
+    body = "".join(f"{0.03 + i / 1000 * (1 + i % 2)},{'' if i == 2 else 0.1 * (0.03 + i / 1000 * (1 + i % 2)):},{0.006 + i / 5000}\n"
+                   for i in range(6))
+    table = read_table(write(tmp_path, "V (m s-1),V_se (m s-1),ustar (m s-1)\n" + body))
+    full = require_positive(table, ("ustar",), False)
+    assert full.errors["velocity"] == pytest.approx(0.1 * full.columns["velocity"])
+    assert any("1 rows have no error of velocity: the usual one, 10.0 %" in remark for remark in full.left_out)
+
+
+def test_three_rows_say_little(tmp_path: Path) -> None:
+    table = read_table(write(tmp_path, HEADER + "0,0.01,0.005,0.05\n1,0.02,0.007,0.09\n2,0.03,0.009,0.11\n"))
+    found = analyse(table, ScalingSettings(bootstrap_samples=100, permutations=100))
+    assert not any(item.guard.beats_chance for item in found.tested)
+    assert found.tested[0].free.slope.high - found.tested[0].free.slope.low > 1
