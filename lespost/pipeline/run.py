@@ -27,6 +27,7 @@ from lespost.findings import Decision, Finding
 from lespost.forcing.resolve import mean_direction, resolve_forcing
 from lespost.pipeline.comparison import compare_with_records
 from lespost.pipeline.files import plain, write_csv, write_json, write_netcdf, write_zarr
+from lespost.pipeline.laws import laws_of_the_runs
 from lespost.pipeline.outcome import Outcome
 from lespost.pipeline.plan import RunPlan, make_plan
 from lespost.pipeline.samples import take_samples
@@ -43,6 +44,9 @@ from lespost.regime.classify import classify
 from lespost.versions import stack_versions
 
 Say = Callable[[str], None]
+
+#: Files of an earlier run that this one may not make: taken away first, so that none is mistaken for its result.
+DERIVED = ("run.json", "report.html", "comparison.csv", "comparison.tex", "scaling.csv", "scaling.json", "plan_views.nc")
 
 
 def plan_recipe(recipe: Path, out: Path | None = None) -> RunPlan:
@@ -62,7 +66,8 @@ def run_recipe(recipe: Path, out: Path | None = None, *, fresh: bool = False, sa
     timings: dict[str, float] = {}
     with Journal(plan.out / "journal", _identity(plan), fresh=fresh) as journal:
         say(journal.opened)
-        (plan.out / "run.json").unlink(missing_ok=True)
+        for name in DERIVED:
+            (plan.out / name).unlink(missing_ok=True)
         profiles, summary = _one_pass(plan, journal, started)
         timings["one pass"] = summary.seconds
         return _products(plan, profiles, summary, timings, say)
@@ -136,6 +141,7 @@ def _products(plan: RunPlan, profiles: xr.Dataset, summary: Summary, timings: di
     if comparison is not None:
         timings["comparison"] = clock.perf_counter() - begun
 
+    findings = (*findings, *laws_of_the_runs(plan, say))
     decisions = (*plan.decisions, *(Decision(**item) for item in json.loads(forcing.attrs["decisions"])), *decisions)
     write_json(out / "run.json", _account(plan, regime, forcing, decisions, findings, summary, timings, cautions))
     begun = clock.perf_counter()

@@ -12,6 +12,7 @@ from lespost.instruments.settings import InstrumentSettings
 from lespost.profiles.settings import ProfilesSettings, WindowsSettings
 from lespost.records.settings import RecordSettings
 from lespost.regime.settings import RegimeSettings
+from lespost.scaling.settings import ScalingSettings
 from lespost.settings import Settings
 
 
@@ -20,6 +21,13 @@ class RunSettings(Settings):
 
     title: str = Field("", max_length=200, description="Title of the page.")
     output: str = Field("", description="Results folder, relative to the recipe; default: the recipe's name + _out.")
+
+
+class ScalingSection(ScalingSettings):
+    """[scaling]: present where velocity laws are to be tested on the windows of this run and of others."""
+
+    results: tuple[str, ...] = Field(
+        (), description="Results folders of other runs whose windows join this run's in one table, relative to the recipe.")
 
 
 class Recipe(Settings):
@@ -35,6 +43,7 @@ class Recipe(Settings):
     instrument: tuple[InstrumentSettings, ...] = ()
     record: tuple[RecordSettings, ...] = ()
     comparison: ComparisonSettings = ComparisonSettings()
+    scaling: ScalingSection | None = None
     compute: ComputeSettings = ComputeSettings()
 
     @model_validator(mode="after")
