@@ -2,8 +2,8 @@
 
 Three witnesses are heard. The component variances (orderings.py) give the answer and its probability. Production of turbulence
 in the band and the forcing (Belcher et al. 2012) are asked independently; they do not vote, but where both contradict a
-definite answer in one voice, the answer is "mixed"; so it is where the variances lie between convection and Langmuir turbulence, whose orderings overlap. Variances
-that cannot be told apart give "undetermined".
+definite answer in one voice, the answer is "mixed"; so it is where the variances lie between convection and Langmuir
+turbulence, whose orderings overlap. Variances that cannot be told apart give "undetermined".
 """
 
 from __future__ import annotations
