@@ -134,7 +134,7 @@ def _few_ticks(axis: plt.Axes, x: bool) -> None:
     low, high = axis.get_xlim() if x else axis.get_ylim()
     decades = np.log10(high / low)
     choices = ((3.0, (1.0,)), (1.3, (1.0, 3.0)), (0.5, (1.0, 2.0, 5.0)), (0.22, (1.0, 1.5, 2.0, 3.0, 4.0, 6.0, 8.0)),
-               (0.0, tuple(np.arange(1.0, 10.0, 0.2))))
+               (0.0, tuple(np.arange(1.0, 9.6, 0.2))))
     subs = next(numbers for least, numbers in choices if decades >= least)
     which = axis.xaxis if x else axis.yaxis
     which.set_major_locator(LogLocator(subs=subs, numticks=40))
