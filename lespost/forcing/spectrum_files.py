@@ -179,7 +179,8 @@ def _values(variable: Any) -> np.ndarray:
 def _from_dataset(data: Any, file: Path) -> RawSpectra:
     variable = _named(data, *reversed(DENSITY_NAMES))
     if variable is None:
-        raise DataError(f"{file}: no variable has the standard name {' or '.join(DENSITY_NAMES)}; add that attribute to the variable of the density, or "
+        raise DataError(f"{file}: no variable has the standard name {' or '.join(DENSITY_NAMES)}; "
+                        f"add that attribute to the variable of the density, or "
                         "give the "
                         f"spectrum as a two-column text file. The file has: {', '.join(data.variables) or 'nothing'}.")
     name = f'{file.name}, variable "{variable.name}"'
