@@ -91,6 +91,13 @@ def number_text(value: Any, digits: int = 3) -> str:
     return f"{mantissa}·10^{int(exponent)}".replace("-", "−")
 
 
+def probability_text(probability: Any) -> str:
+    """A bootstrap probability for reading: never 1, which no finite number of replicates shows; empty if unknown."""
+    if probability is None or pd.isna(probability):
+        return ""
+    return "above 0.999" if float(probability) > 0.999 else f"{float(probability):.3g}"
+
+
 def frame_table(frame: pd.DataFrame, caption: str) -> Table:
     """A data frame as a table of the page; numbers are rounded for reading, the files keep all digits."""
     rows = []
@@ -125,7 +132,7 @@ def _answers(results: Results) -> list[dict[str, Any]]:
         if isinstance(first.get("agreement"), str):
             why.append(f"Witnesses: {first['agreement']}.")
         if isinstance(first.get("note"), str):
-            why.append(first["note"])
+            why.append(f"{first['note'][:1].upper()}{first['note'][1:].rstrip('.')}.")
         below = [f"{-row['z_top']:.0f}–{-row['z_bottom']:.0f} m {REGIME_WORD.get(row['regime'], row['regime'])}"
                  for _, row in rows.iloc[1:].iterrows()]
         if below:
@@ -135,7 +142,7 @@ def _answers(results: Results) -> list[dict[str, Any]]:
             "layer": f"{-first['z_top']:.1f}–{-first['z_bottom']:.1f} m",
             "regime": REGIME_WORD.get(regime, regime),
             "colour": style.REGIME_COLOUR.get(regime, "#767676"),
-            "probability": number_text(probability, 3) if probability is not None else "",
+            "probability": probability_text(probability),
             "why": " ".join(why),
             "numbers": [{"label": label, "text": f"{number_text(first[column] * factor)} {unit}".strip()}
                         for column, label, unit, factor in ANSWER_NUMBERS

@@ -12,7 +12,7 @@ import pytest
 
 from lespost.errors import DataError
 from lespost.report.build import build_report
-from lespost.report.page import number_text
+from lespost.report.page import number_text, probability_text
 from lespost.report.triangle_figure import ternary
 from tests.unit.report.results_folder import make_results
 
@@ -116,6 +116,11 @@ def test_an_incomplete_folder_is_told(tmp_path: Path) -> None:
 )
 def test_numbers_are_written_for_reading(value: float | None, text: str) -> None:
     assert number_text(value) == text
+
+
+@pytest.mark.parametrize(("value", "text"), [(1.0, "above 0.999"), (0.998, "0.998"), (0.97, "0.97"), (np.nan, ""), (None, "")])
+def test_probabilities_are_never_certain(value: float | None, text: str) -> None:
+    assert probability_text(value) == text
 
 
 def test_corners_and_centre_of_the_triangle() -> None:
