@@ -12,7 +12,7 @@ from scipy.stats import t as student
 from lespost.report import style
 from lespost.scaling.analyse import Analysis, Tested
 from lespost.scaling.fit import Axes, LawFit
-from lespost.scaling.laws import Powers, dimensions, unit_text
+from lespost.scaling.laws import Law, Powers, dimensions, unit_text
 from lespost.scaling.self_correlation import Guard, permuted_blocks
 
 _SYMBOLS = {"velocity": "V", "ustar": "u_*", "us0": "u_{s0}", "us_sl": "u_{sSL}", "h": "h", "b0": "B_0", "buoyancy_frequency": "N",
@@ -44,7 +44,7 @@ def laws_figure(analysis: Analysis, scaled: bool) -> Figure:
     rng = np.random.default_rng(analysis.settings.seed)
     for axis, (item, axes, fit, found) in zip(grid, panels, strict=False):
         _draw(axis, analysis, axes, fit, found, rng)
-        axis.set_title(item.law.name, fontsize=7.5)
+        axis.set_title(_title(item.law), fontsize=7.5)
     handles = [
         plt.Line2D([], [], marker="o", linestyle="none", color=_DATA, markersize=3, label="data"),
         plt.Line2D([], [], color=_LINE, label=f"York's line and {100 * analysis.settings.confidence:.0f} % band"),
@@ -68,13 +68,13 @@ def residual_figure(analysis: Analysis) -> Figure:
             axis.axhline(0.0, color="0.6", linewidth=0.6)
             axis.plot(values, item.free.residual, "o", color=_DATA, markersize=2.2, alpha=_alpha(values.size), markeredgewidth=0)
             r = float(np.corrcoef(np.log(values), item.free.residual)[0, 1])
-            axis.text(0.02, 0.97, f"r = {r:.2f}", transform=axis.transAxes, fontsize=6.5, color="0.25", va="top")
+            axis.text(0.02, 0.97, f"r = {_signed(r)}", transform=axis.transAxes, fontsize=6.5, color="0.25", va="top")
             axis.set_xscale("log")
             _few_ticks(axis, x=True)
             if row == len(tested) - 1:
                 axis.set_xlabel(f"${_SYMBOLS[name]}$ [{unit_text(*dimensions({name: 1.0}))}]")
             if column == 0:
-                axis.set_title(f"ln(V/fit): {item.law.name}", fontsize=7)
+                axis.set_title(f"ln(V/fit): {_title(item.law)}", fontsize=7)
     return figure
 
 
@@ -118,27 +118,29 @@ def _draw(axis: plt.Axes, analysis: Analysis, axes: Axes, fit: LawFit, found: Gu
     axis.set(xscale="log", yscale="log")
     _few_ticks(axis, x=True)
     _few_ticks(axis, x=False)
-    axis.set_xlabel(_label(axes.x_powers))
+    axis.set_xlabel(_label(axes.y_powers, "predicted ") if axes.predicted else _label(axes.x_powers))
     axis.set_ylabel(_label(axes.y_powers))
     lower_right = fit.slope.value >= 0
-    axis.text(0.97 if lower_right else 0.03, 0.03, f"slope {fit.slope.value:.2f} ({fit.slope.low:.2f}, {fit.slope.high:.2f})\n"
-              f"r {found.correlation:.2f}; by chance {found.chance.correlation:.2f}", transform=axis.transAxes, fontsize=6.3, color="0.15",
+    numbers = (f"slope {_signed(fit.slope.value)} ({_signed(fit.slope.low)}, {_signed(fit.slope.high)})\n"
+               f"r {_signed(found.correlation)}; by chance {_signed(found.chance.correlation)}")
+    axis.text(0.97 if lower_right else 0.03, 0.03, numbers, transform=axis.transAxes, fontsize=6.3, color="0.15",
               ha="right" if lower_right else "left", va="bottom", zorder=6,
               bbox={"facecolor": "white", "alpha": 0.75, "edgecolor": "none", "pad": 1.0})
 
 
 def _few_ticks(axis: plt.Axes, x: bool) -> None:
     """At most five plain numbers: axes of less than a decade would crowd."""
-    from matplotlib.ticker import FuncFormatter, LogLocator, NullFormatter, NullLocator
+    from matplotlib.ticker import FixedLocator, FuncFormatter, LogLocator, MaxNLocator, NullFormatter, NullLocator
 
     low, high = axis.get_xlim() if x else axis.get_ylim()
     decades = np.log10(high / low)
-    choices = ((3.0, (1.0,)), (1.3, (1.0, 3.0)), (0.5, (1.0, 2.0, 5.0)), (0.22, (1.0, 1.5, 2.0, 3.0, 4.0, 6.0, 8.0)),
-               (0.0, tuple(np.arange(1.0, 9.6, 0.2))))
-    subs = next(numbers for least, numbers in choices if decades >= least)
     which = axis.xaxis if x else axis.yaxis
-    which.set_major_locator(LogLocator(subs=subs, numticks=40))
-    which.set_major_formatter(FuncFormatter(lambda value, _: f"{value:.3g}"))
+    if decades < 0.5:  # so narrow an axis is nearly linear: evenly stepped numbers stay apart
+        which.set_major_locator(FixedLocator(list(MaxNLocator(4, steps=[1, 2, 2.5, 5, 10]).tick_values(low, high))))
+    else:
+        choices = ((3.0, (1.0,)), (1.3, (1.0, 3.0)), (0.5, (1.0, 2.0, 5.0)))
+        which.set_major_locator(LogLocator(subs=next(numbers for least, numbers in choices if decades >= least), numticks=40))
+    which.set_major_formatter(FuncFormatter(lambda value, _: f"{value:.6g}"))
     which.set_minor_locator(NullLocator())
     which.set_minor_formatter(NullFormatter())
 
@@ -147,12 +149,34 @@ def _alpha(count: int) -> float:
     return float(np.clip(40.0 / count, 0.15, 0.9))
 
 
-def _label(powers: Powers) -> str:
+def _title(law: Law) -> str:
+    """The law as an equation; a published curve by its name and source."""
+    if law.curve is not None:
+        return law.source.split(",")[0]
+    if law.free:
+        return rf"$V \propto {_product(law.base) if law.base else ''}\,[{_product(law.powers)}]^n$"
+    return rf"$V \propto {_product(law.powers)}$"
+
+
+def _signed(value: float) -> str:
+    """Two decimals with a true minus, and no minus before zero."""
+    return f"{round(value, 2) + 0.0:.2f}".replace("-", "\u2212")
+
+
+def _label(powers: Powers, before: str = "") -> str:
+    return f"{before}${_product(powers)}$ [{unit_text(*dimensions(powers))}]"
+
+
+def _product(powers: Powers) -> str:
+    if len(powers) == 2 and abs(sum(powers.values())) < 1e-9:
+        (top, power), (bottom, _) = sorted(powers.items(), key=lambda item: -item[1])
+        ratio = f"{_SYMBOLS[top]}/{_SYMBOLS[bottom]}"
+        return ratio if abs(power - 1) < 1e-9 else f"({ratio})^{{{_fraction(power)}}}"
     above, below = ([_factor(name, abs(power)) for name, power in powers.items() if sign * power > 0] for sign in (1, -1))
-    text = " ".join(above) or "1"
+    text = r"\,".join(above) or "1"
     if below:
         text += " / " + (below[0] if len(below) == 1 else f"({' '.join(below)})")
-    return f"${text}$ [{unit_text(*dimensions(powers))}]"
+    return text
 
 
 def _factor(name: str, power: float) -> str:

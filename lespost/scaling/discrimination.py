@@ -34,7 +34,7 @@ class Collinearity:
 class Standing:
     """One law among its rivals. aic, bic: with the effective number of rows, relative to the best. weight: Akaike weight.
 
-    chosen: share of bootstrap samples of the rows in which the law has the lowest AIC.
+    chosen: share of bootstrap samples of the rows in which the law, fitted anew, has the lowest AIC.
     """
 
     name: str
@@ -101,7 +101,7 @@ def discriminate(fits: Sequence[LawFit], table: ScaleTable, count: int, level: f
     likelihood = -0.5 * neff * (np.log(2 * np.pi * (residuals**2).mean(1)) + 1)
     aic, bic = 2 * free - 2 * likelihood, np.log(neff) * free - 2 * likelihood
     weight = np.exp(-0.5 * (aic - aic.min()))
-    chosen = _selection(residuals, free, neff, max(fit.block for fit in fits), count, rng)
+    chosen = _selection(fits, residuals, free, neff, table, count, rng)
     standings = [
         Standing(fit.law.name, int(free[i]), float(np.std(fit.residual)), float(likelihood[i]), float(aic[i] - aic.min()),
                  float(bic[i] - bic.min()), float(weight[i] / weight.sum()), float(chosen[i])) for i, fit in enumerate(fits)
@@ -116,11 +116,24 @@ def discriminate(fits: Sequence[LawFit], table: ScaleTable, count: int, level: f
                           tuple(item.name for item in order if item.name == best or item.name in rivals))
 
 
-def _selection(residuals: np.ndarray, free: np.ndarray, neff: float, block: float, count: int, rng: np.random.Generator) -> np.ndarray:
-    """Share of resampled row sets in which each law has the lowest AIC, its line being kept."""
-    rows = draw_rows(residuals.shape[1], block, count, rng)
-    squares = (residuals**2)[:, rows].mean(-1)
-    criterion = neff * np.log(squares) + 2 * free[:, None]
+def _selection(fits: Sequence[LawFit], residuals: np.ndarray, free: np.ndarray, neff: float, table: ScaleTable, count: int,
+               rng: np.random.Generator) -> np.ndarray:
+    """Share of resampled row sets in which each law has the lowest AIC, its constant and fitted exponent found anew in each.
+
+    The line through a sample is the whole record's line corrected by least squares of its residuals.
+    """
+    rows = draw_rows(residuals.shape[1], max(fit.block for fit in fits), count, rng)
+    squares = np.empty((len(fits), count))
+    for i, fit in enumerate(fits):
+        part = residuals[i][rows]
+        part = part - part.mean(-1, keepdims=True)
+        squares[i] = (part**2).mean(-1)
+        if not fit.fixed:
+            predictor = fit.law.log_predictor(table)[rows]
+            predictor = predictor - predictor.mean(-1, keepdims=True)
+            spread = np.maximum((predictor**2).mean(-1), 1e-300)
+            squares[i] -= (part * predictor).mean(-1) ** 2 / spread
+    criterion = neff * np.log(np.maximum(squares, 1e-300)) + 2 * free[:, None]
     return np.bincount(np.argmin(criterion, axis=0), minlength=len(residuals)) / count
 
 

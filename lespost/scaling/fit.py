@@ -21,7 +21,8 @@ class Axes:
     """Logarithms to be plotted against each other, with the powers they are made of and the errors of the rows.
 
     x, y: (row,), natural logarithms of SI values. x_powers, y_powers: exponents by column. correlation: of the errors of x and y
-    of one row, from the columns they share.
+    of one row, from the columns they share. predicted: name of the published curve whose velocity x is (then x_powers are its local
+    exponents), "" for products.
     """
 
     x: np.ndarray
@@ -31,6 +32,7 @@ class Axes:
     x_se: np.ndarray
     y_se: np.ndarray
     correlation: np.ndarray
+    predicted: str = ""
 
 
 @dataclass(frozen=True)
@@ -81,7 +83,8 @@ def law_axes(law: Law, table: ScaleTable, scaled_by: Powers | None = None) -> Ax
         var_x, var_y, shared = var_x + a * a * known, var_y + b * b * known, shared + a * b * known
     x_se, y_se = np.sqrt(var_x), np.sqrt(var_y)
     both = x_se * y_se
-    return Axes(x, y, x_powers, y_powers, x_se, y_se, np.divide(shared, both, out=zero, where=both > 0))
+    return Axes(x, y, x_powers, y_powers, x_se, y_se, np.divide(shared, both, out=zero, where=both > 0),
+                law.name if law.curve else "")
 
 
 def block_length(series: np.ndarray, ordered: bool) -> float:

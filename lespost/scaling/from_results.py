@@ -1,7 +1,7 @@
 """The table of scales from results folders of `lespost run`: a row per run and window.
 
 V is the larger of the rms crosswind and rms vertical velocity in the upper mixed-layer band of each window, as stated in the name
-of the velocity; u*, u_s0, h and b0 are those of the window.
+of the velocity; u*, u_s0, the Stokes drift of the surface layer, h and b0 are those of the window.
 """
 
 from __future__ import annotations
@@ -27,7 +27,7 @@ def table_from_results(folders: Sequence[Path]) -> ScaleTable:
     rows: list[dict[str, float]] = []
     for folder in folders:
         rows += _folder(folder)
-    names = ("velocity", "ustar", "us0", "h", "b0")
+    names = ("velocity", "ustar", "us0", "us_sl", "h", "b0")
     columns = {name: np.array([row[name] for row in rows]) for name in names}
     kept = {name: values for name, values in columns.items() if np.isfinite(values).any()}
     remarks = tuple(f"{name} is unknown in all runs" for name in names if name not in kept)
@@ -56,7 +56,10 @@ def _row(window: object, band: dict) -> dict[str, float]:
     assert isinstance(window, xr.Dataset)
     inside = window.sel(z=slice(band["z_bottom"], band["z_top"]))
     unknown = {"velocity": float("nan"), "velocity_se": float("nan")}
+    # the surface-layer drift, less its reference where the run took one off, is what La_SL was made of: u*/La_SL²
+    langmuir = float(band.get("la_sl", float("nan")))
     scales = {"ustar": float(band["ustar"]), "us0": float(band["us0"]), "h": float(band["h"]),
+              "us_sl": float(band["ustar"]) / langmuir**2 if langmuir > 0 else float("nan"),
               "b0": float(window["surface_buoyancy_flux"]) if "surface_buoyancy_flux" in window else float("nan")}
     angle = np.radians(float(band["axis_deg"]))
     if inside.sizes["z"] == 0 or not np.isfinite(angle):

@@ -88,7 +88,8 @@ def _orthogonal(axes: Axes, fit: LawFit) -> float:
 
 def axes_text(axes: Axes) -> str:
     """The two axes in words, "velocity ustar^-1 against us0 ustar^-1"."""
-    return f"{product_text(axes.y_powers)} against {product_text(axes.x_powers)}"
+    y = product_text(axes.y_powers)
+    return f"{y} against {y.replace('velocity', axes.predicted, 1) if axes.predicted else product_text(axes.x_powers)}"
 
 
 def verdict(found: Guard) -> str:

@@ -80,7 +80,8 @@ def results(folder: Path, ustar: float, us0: float, variances: tuple[float, floa
         data[f"{name}_se"] = (("window", "z"), np.full((1, 4), 0.1 * abs(value)))
     data["surface_buoyancy_flux"] = ("window", [1e-8])
     data.to_netcdf(folder / "windows.nc")
-    band = {"window": "all", "z_bottom": -20.0, "z_top": -4.0, "axis_deg": 90.0, "ustar": ustar, "us0": us0, "h": 40.0}
+    band = {"window": "all", "z_bottom": -20.0, "z_top": -4.0, "axis_deg": 90.0, "ustar": ustar, "us0": us0, "la_sl": 0.4,
+            "h": 40.0}
     pd.DataFrame([band, {**band, "z_bottom": -36.0, "z_top": -20.0}]).to_csv(folder / "regime.csv", index=False)
     return folder
 
@@ -92,6 +93,7 @@ def test_table_from_results_folders(tmp_path: Path) -> None:
     assert table.columns["velocity"] == pytest.approx(np.sqrt([4e-4, 8e-4, 12e-4]))
     assert table.errors["velocity"] == pytest.approx(0.05 * np.sqrt([4e-4, 8e-4, 12e-4]))  # closed form: half the relative error
     assert table.columns["us0"] == pytest.approx([0.06, 0.08, 0.10])
+    assert table.columns["us_sl"] == pytest.approx(np.array([0.006, 0.007, 0.008]) / 0.16)  # La_SL² = u*/u_s,SL, turned round
     assert table.columns["b0"] == pytest.approx([1e-8] * 3)
     assert table.time is None
     assert "rms" in table.velocity_name

@@ -10,7 +10,7 @@ import pytest
 
 from lespost.forcing.stress import friction_velocity
 from lespost.scaling.analyse import analyse
-from lespost.scaling.laws import BUILT_IN
+from lespost.scaling.laws import BUILT_IN, parse_law
 from lespost.scaling.planner import plan
 from lespost.scaling.settings import ScalingSettings
 from lespost.scaling.table import ScaleTable
@@ -47,6 +47,19 @@ def test_such_a_record_separates_wind_from_waves_but_hardly_their_mixtures(forci
     # with fitted exponents the common rise of wind and waves hides more
     fitted = plan(BUILT_IN["us0"], BUILT_IN["ustar"], forcing, 0.2, 3600.0, free=True).hours
     assert fitted > hours["ustar"]
+
+
+def test_a_year_of_such_forcing_tells_exponents_of_a_twentieth_apart(forcing: ScaleTable) -> None:
+    # the same typical scatter; 8766 h in a year, 1456 h in the two months
+    half = parse_law("us0^0.5 ustar^0.5")
+
+    def hours(exponent: float) -> float:
+        return plan(half, parse_law(f"us0^{exponent} ustar^{1 - exponent}"), forcing, 0.2, 3600.0).hours
+
+    assert hours(0.45) < 8766 < hours(0.46)
+    assert hours(0.37) < 1456 < hours(0.39)
+    # derived: for small differences d the rows go as 1/d²
+    assert hours(0.48) / hours(0.46) == pytest.approx(4.0, rel=0.01)
 
 
 def test_true_law_is_found_in_velocities_made_with_it(forcing: ScaleTable) -> None:
