@@ -11,7 +11,7 @@ from pathlib import Path
 
 import numpy as np
 
-from lespost.errors import DataError
+from lespost.errors import DataError, RequestError
 from lespost.scaling.table import ScaleTable, checked
 
 VELOCITY_NAME = "largest of the rms velocities across the axis and vertical, upper mixed layer, resolved and subgrid"
@@ -22,8 +22,13 @@ def table_from_results(folders: Sequence[Path]) -> ScaleTable:
 
     The variances are means over the band's levels, rotated to the axis of the band (axis_deg), with the standard errors of
     windows.nc carried as if the levels of a band were fully correlated. Rows have no time: windows of runs are separate samples.
-    Raises DataError for a folder without the two files, or fewer than three rows in all.
+    Raises DataError for a folder without the two files, or fewer than three rows in all; RequestError for a folder given twice.
     """
+    seen: set[Path] = set()
+    for folder in folders:
+        if folder.resolve() in seen:
+            raise RequestError(f"{folder}: this results folder is given twice; its windows would count twice, so name it once.")
+        seen.add(folder.resolve())
     rows: list[dict[str, float]] = []
     for folder in folders:
         rows += _folder(folder)

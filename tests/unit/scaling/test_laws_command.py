@@ -11,7 +11,7 @@ import pytest
 import xarray as xr
 
 from lespost.cli import run
-from lespost.errors import DataError
+from lespost.errors import DataError, RequestError
 from lespost.scaling.from_results import table_from_results
 from lespost.scaling.table import ScaleTable
 from tests.unit.scaling.storms import scattered, storm
@@ -100,6 +100,8 @@ def test_table_from_results_folders(tmp_path: Path) -> None:
     assert run(["laws", *map(str, folders), "--law", "us0"]) == 0
     with pytest.raises(DataError, match="too few"):
         table_from_results(folders[:2])
+    with pytest.raises(RequestError, match="given twice"):
+        table_from_results([*folders, folders[0] / ".." / folders[0].name])
     (folders[0] / "windows.nc").unlink()
     with pytest.raises(DataError, match=r"no windows\.nc"):
         table_from_results(folders)
