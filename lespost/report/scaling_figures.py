@@ -96,7 +96,7 @@ def _grid(count: int) -> tuple[Figure, list[plt.Axes]]:
 
 def _draw(axis: plt.Axes, analysis: Analysis, axes: Axes, fit: LawFit, found: Guard, rng: np.random.Generator) -> None:
     velocity = np.log(analysis.table.columns["velocity"])
-    mixed = velocity[permuted_blocks(velocity.size, fit.block, _CLOUDS, rng)] - velocity
+    mixed = velocity[permuted_blocks(velocity.size, found.run, _CLOUDS, rng)] - velocity
     cloud_x = axes.x + axes.x_powers.get("velocity", 0.0) * mixed
     cloud_y = axes.y + axes.y_powers.get("velocity", 0.0) * mixed
     keep = rng.permutation(cloud_x.size)[:1500]

@@ -12,10 +12,10 @@ import numpy as np
 from lespost.errors import DataError, RequestError
 from lespost.scaling.dimensions import Known, MissingScale, known_from_text, missing_scale
 from lespost.scaling.discrimination import Discrimination, discriminate
-from lespost.scaling.fit import Axes, LawFit, fit_law, law_axes
+from lespost.scaling.fit import Axes, LawFit, block_length, fit_law, law_axes
 from lespost.scaling.laws import BUILT_IN, Law, Powers, parse_law, require_positive, usable
 from lespost.scaling.planner import Plan, plan, scatter_of
-from lespost.scaling.self_correlation import Guard, guard
+from lespost.scaling.self_correlation import Guard, guard, run_length
 from lespost.scaling.settings import ScalingSettings
 from lespost.scaling.table import ScaleTable
 
@@ -116,7 +116,8 @@ def _test(law: Law, table: ScaleTable, by: Powers, known: tuple[Known, ...], set
     free = fit_law(law, table, count, level, rng)
     fixed = None if law.free else fit_law(law, table, count, level, rng, fixed=True)
     axes = law_axes(law, table)
-    own = guard(axes.x, axes.y, axes.x_powers, axes.y_powers, table, free.block, settings.permutations, level, rng)
+    run = run_length(max(free.block, block_length(np.log(table.columns["velocity"]), table.time is not None)))
+    own = guard(axes.x, axes.y, axes.x_powers, axes.y_powers, table, run, settings.permutations, level, rng)
     scaled = scaled_axes = scaled_guard = None
     # a law whose velocity is already divided by something has its scaled axes built in
     if by and not law.free:
@@ -124,7 +125,7 @@ def _test(law: Law, table: ScaleTable, by: Powers, known: tuple[Known, ...], set
         if np.ptp(candidate.x) > 1e-9:
             scaled_axes = candidate
             scaled = fit_law(law, table, count, level, rng, scaled_by=by)
-            scaled_guard = guard(candidate.x, candidate.y, candidate.x_powers, candidate.y_powers, table, free.block,
+            scaled_guard = guard(candidate.x, candidate.y, candidate.x_powers, candidate.y_powers, table, run,
                                  settings.permutations, level, rng)
     missing = missing_scale(free, table, level, known) if law.curve is None else None
     rounded = None

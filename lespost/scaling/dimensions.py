@@ -16,7 +16,7 @@ from scipy.stats import t as student
 
 from lespost.constants import GRAVITY
 from lespost.errors import RequestError
-from lespost.scaling.fit import Estimate, LawFit
+from lespost.scaling.fit import Estimate, LawFit, spread
 from lespost.scaling.laws import dimensions, unit_text
 from lespost.scaling.table import ScaleTable
 from lespost.units import convertible, parse_quantity
@@ -83,16 +83,22 @@ def missing_scale(fit: LawFit, table: ScaleTable, level: float, known: tuple[Kno
             logs = fit.intercepts / powers
         centre = fit.intercept.value / power
         logs = logs[np.isfinite(logs)]
+        low, high = (float(q) for q in np.quantile(logs, (0.5 - level / 2, 0.5 + level / 2)))
     else:
         # intercepts at the exponent taken as exact, through the middle of the data
         middle = _middle(fit, table)
         centre = (fit.intercept.value + (fit.slope.value - n) * middle) / power
         logs = (fit.intercepts + (fit.slopes - n) * middle) / power
-    low, high = (float(q) for q in np.quantile(logs, (0.5 - level / 2, 0.5 + level / 2)))
-    # the bootstrap knows nothing of how few the independent rows are; Student's t does
+        half = float(norm.ppf(0.5 + level / 2)) * spread(logs)
+        low, high = centre - half, centre + half
+    # the bootstrap knows nothing of how few the independent rows are (Student's t does), nor of what the error of the intercept was
+    # widened by for few rows and serial correlation
     widen = float(student.ppf(0.5 + level / 2, max(fit.neff - 2, 1)) / norm.ppf(0.5 + level / 2))
+    widen *= max(fit.intercept.se / max(spread(fit.intercepts), 1e-300), 1.0)
     low, high = centre + (low - centre) * widen, centre + (high - centre) * widen
-    value = Estimate(float(np.exp(centre)), float(np.exp(centre) * np.std(logs)), float(np.exp(low)), float(np.exp(high)))
+    # close to balance the scale is no longer known to any power of ten; e^±300 stands for that without overflow
+    size, bottom, top = (float(np.exp(np.clip(log, -300, 300))) for log in (centre, low, high))
+    value = Estimate(size, size * spread(logs), bottom, top)
     balanced_low, balanced_high = (_left(fit, s) for s in (fit.slope.low, fit.slope.high))
     ambiguous = exponent is None and not fit.fixed and all(
         min(a, b) <= 0 <= max(a, b) for a, b in zip(balanced_low, balanced_high, strict=True))

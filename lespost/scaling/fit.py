@@ -137,8 +137,8 @@ def fit_law(law: Law, table: ScaleTable, count: int, level: float, rng: np.rando
     quantile = float(student.ppf(0.5 + level / 2, freedom))
     # blocks of a short series reproduce only part of its correlation; the integral scale of the score counts the rest
     repeats = _repeats(residual * (axes.x - axes.x.mean()), ordered), _repeats(residual, ordered)
-    slope_se = 0.0 if slope is not None else max(_spread(many.slope) * small, float(line.slope_se) * repeats[0])
-    intercept_se = max(_spread(many.intercept) * small, float(line.intercept_se) * (repeats[0] if slope is None else repeats[1]))
+    slope_se = 0.0 if slope is not None else max(spread(many.slope) * small, float(line.slope_se) * repeats[0])
+    intercept_se = max(spread(many.intercept) * small, float(line.intercept_se) * (repeats[0] if slope is None else repeats[1]))
 
     def estimate(value: float, error: float) -> Estimate:
         return Estimate(value, error, value - quantile * error, value + quantile * error)
@@ -167,7 +167,7 @@ def _repeats(series: np.ndarray, ordered: bool) -> float:
     return float(np.sqrt(series.size / effective_samples(series[:, None])[0]))
 
 
-def _spread(replicates: np.ndarray) -> float:
+def spread(replicates: np.ndarray) -> float:
     """Standard deviation by the middle 90 %, so that a few wild replicates of York's line do not rule."""
     low, high = np.nanquantile(replicates, (0.05, 0.95))
     return float((high - low) / 3.2897)

@@ -6,9 +6,9 @@ import numpy as np
 import pytest
 
 from lespost.scaling.dimensions import missing_scale
-from lespost.scaling.fit import fit_law, law_axes
+from lespost.scaling.fit import block_length, fit_law, law_axes
 from lespost.scaling.laws import BUILT_IN, Law
-from lespost.scaling.self_correlation import Guard, guard
+from lespost.scaling.self_correlation import Guard, guard, run_length
 from lespost.scaling.table import ScaleTable
 from tests.unit.scaling.storms import scattered, storm
 
@@ -63,9 +63,21 @@ def test_least_squares_would_have_missed_the_truth() -> None:
     assert fit.slope.value == pytest.approx(1.0, abs=0.03)
 
 
-def by_ustar(table: ScaleTable, rng: np.random.Generator) -> Guard:
+def by_ustar(table: ScaleTable, rng: np.random.Generator, run: float = 1.0) -> Guard:
     axes = law_axes(BUILT_IN["us0"], table, {"ustar": 1.0})
-    return guard(axes.x, axes.y, axes.x_powers, axes.y_powers, table, 1.0, 400, 0.95, rng)
+    return guard(axes.x, axes.y, axes.x_powers, axes.y_powers, table, run, 400, 0.95, rng)
+
+
+def test_serial_correlation_does_not_let_chance_pass_for_a_law() -> None:
+    rng = np.random.default_rng(71)
+    careless, passed = 0, 0
+    for _ in range(300):
+        table = scattered(rng, rows=40, constant=0.03, scatter=0.5, memory=0.6)
+        block = max(fit_law(BUILT_IN["us0"], table, 50, 0.95, rng).block, block_length(np.log(table.columns["velocity"]), True))
+        careless += by_ustar(table, rng).beats_chance
+        passed += by_ustar(table, rng, run_length(block)).beats_chance
+    assert careless / 300 > 0.11  # rows shuffled one by one
+    assert 0.02 <= passed / 300 <= 0.085  # level 5 %; binomial spread of 300 tables 1.3 %
 
 
 def test_self_correlation_is_caught() -> None:
@@ -85,11 +97,11 @@ def test_self_correlation_is_caught() -> None:
 def test_hidden_constant_is_recovered() -> None:
     rng = np.random.default_rng(13)
     hits = 0
-    for _ in range(150):
+    for _ in range(300):
         table = storm(rng, rows=60, hidden=0.003)
         fit = fit_law(BUILT_IN["ustar"], table, 200, 0.95, rng)
         found = missing_scale(fit, table, 0.95, exponent=2.0)
         assert found is not None
         assert found.units == "m s-1"
         hits += found.value.low <= 0.003 <= found.value.high
-    assert 0.91 <= hits / 150 <= 0.99  # binomial spread of 150 tables: 1.8 %
+    assert 0.92 <= hits / 300 <= 0.98
